@@ -1,0 +1,22 @@
+//! Filters folders of WAV recordings by a written spec and measures, band by
+//! band, whether what had to go went and what had to stay stayed.
+//!
+//! A recording passes through the modules in this order: [`job`] finds it,
+//! [`wave`] turns its bytes into samples, [`cascade`] filters them, [`output`]
+//! rounds them to what is written, [`wave`] writes them; [`spectrum`] listens on
+//! both sides, [`evidence`] turns spectra into verdicts, [`report`] serializes
+//! them. What the filter is comes from [`spec`] and [`design`].
+//!
+//! Nothing checks itself: `design`, `cascade`, and `spectrum` with `evidence` do not
+//! call one another.
+//!
+//! # Conventions
+//! * Samples are `f64`, full scale is 1.0; an n-bit integer sample is divided by
+//!   2^(n-1) and multiplied by the same on the way out.
+//! * 0 dBFS is the level of a full-scale sine (mean square 0.5). Levels are
+//!   relative to full scale, never sound pressure.
+//! * Attenuation in dB is positive when the level falls; gain is its negative.
+//! * Multi-channel blocks are planar: one `Vec<f64>` a channel.
+//! * Spectra are one-sided sums over segments, periodic window, no detrending.
+
+pub mod section;
