@@ -20,3 +20,4 @@
 //! * Spectra are one-sided sums over segments, periodic window, no detrending.
 
 pub mod section;
+pub mod spec;

@@ -1,0 +1,87 @@
+//! The words that stand for choices in a spec file.
+
+use serde::{Serialize, Serializer};
+
+use super::types::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload};
+
+/// A choice among words.
+pub(super) trait Word: Copy + 'static {
+    /// Every choice, in the order messages list them.
+    const ALL: &'static [Self];
+    /// Words of other origin that mean one of them, in lower case without separators.
+    const ALIASES: &'static [(&'static str, Self)];
+    /// The word in the spec file.
+    fn word(self) -> &'static str;
+}
+
+macro_rules! words {
+    ($type:ty { $($variant:ident => $word:literal $(| $alias:literal)*),+ $(,)? }) => {
+        impl $type {
+            /// Every choice.
+            pub const ALL: &[Self] = &[$(Self::$variant),+];
+
+            /// The word that stands for it in spec and report.
+            pub const fn name(self) -> &'static str {
+                match self {
+                    $(Self::$variant => $word),+
+                }
+            }
+        }
+
+        impl Word for $type {
+            const ALL: &'static [Self] = Self::ALL;
+            const ALIASES: &'static [(&'static str, Self)] = &[$($(($alias, Self::$variant),)*)+];
+
+            fn word(self) -> &'static str {
+                self.name()
+            }
+        }
+
+        impl Serialize for $type {
+            fn serialize<S: Serializer>(&self, serializer: S) -> Result<S::Ok, S::Error> {
+                serializer.serialize_str(self.name())
+            }
+        }
+    };
+}
+
+words!(BeyondHalfRate {
+    Error => "error" | "fail" | "refuse" | "stop",
+    LeaveOut => "leave-out" | "skip" | "drop" | "ignore" | "omit",
+});
+
+words!(OutputEncoding {
+    Same => "same" | "input" | "keep" | "original",
+    Pcm16 => "pcm16" | "16" | "16bit" | "int16" | "s16" | "i16",
+    Pcm24 => "pcm24" | "24" | "24bit" | "int24" | "s24" | "i24",
+    Pcm32 => "pcm32" | "32" | "32bit" | "int32" | "s32" | "i32",
+    Float32 => "float32" | "float" | "f32" | "32bitfloat" | "single",
+    Float64 => "float64" | "double" | "f64" | "64" | "64bit" | "64bitfloat",
+});
+
+words!(Dither {
+    Triangular => "triangular" | "tpdf" | "on" | "yes" | "true",
+    None => "none" | "off" | "no" | "false",
+});
+
+words!(Overload {
+    Refuse => "refuse" | "error" | "fail",
+    Clip => "clip" | "saturate" | "limit",
+    Scale => "scale" | "normalize" | "attenuate",
+});
+
+// A file's `kind` may be a notch too: other words for it stand with its reader.
+words!(FilterKind {
+    Lowpass => "lowpass",
+    Highpass => "highpass",
+    Bandpass => "bandpass",
+    Bandstop => "bandstop",
+});
+
+words!(Family {
+    Butterworth => "butterworth" | "butter" | "maximallyflat",
+    Chebyshev1 => "chebyshev1" | "chebyshev" | "cheby1" | "cheb1" | "chebyshevi" | "chebyshevtype1" | "type1" | "cheby",
+    Chebyshev2 => "chebyshev2" | "cheby2" | "cheb2" | "chebyshevii" | "chebyshevtype2" | "type2" | "inversechebyshev",
+    Elliptic => "elliptic" | "ellip" | "cauer" | "zolotarev",
+    Bessel => "bessel" | "thomson" | "maximallyflatdelay",
+});
