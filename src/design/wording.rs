@@ -1,0 +1,74 @@
+//! Figures and sentences that the design's messages have in common.
+
+use super::check::{BandDesign, Check};
+use crate::spec::Requirement;
+
+/// A figure with at most six decimals and no trailing zeros.
+pub fn figure(value: f64) -> String {
+    let fixed = format!("{value:.6}");
+    let short = fixed.trim_end_matches('0').trim_end_matches('.');
+    if short == "-0" { "0".to_owned() } else { short.to_owned() }
+}
+
+/// A level or attenuation as the report rounds it.
+fn decibel(value: f64) -> String {
+    figure(libm::round(value * 1000.0) / 1000.0)
+}
+
+/// What is impossible about a band, with the figure and the repair; `None` where
+/// nothing is. `has_stages` says whether there is any filter at this rate.
+pub fn impossible(band: &BandDesign, rate_hz: u32, has_stages: bool) -> Option<String> {
+    if band.check != Some(Check::Impossible) {
+        return None;
+    }
+    let name = format!("band \"{}\" at {rate_hz} Hz", band.band.name);
+    let (from_hz, to_hz) = (figure(band.band.line.from_hz), figure(band.band.line.to_hz));
+    match (&band.band.requirement, band.violation) {
+        (Requirement::Keep { keep_db, .. }, Some(violation)) => {
+            let (gain_db, at_hz) = (decibel(violation.gain_db), figure(violation.at_hz));
+            let repair = if violation.gain_db < 0.0 {
+                "raise keep_db, narrow the band, move the edge of the stage that takes it out, \
+                 or name the reduce band that lies there in except"
+            } else {
+                "raise keep_db, narrow the band, or change the stage that raises it"
+            };
+            Some(format!(
+                "{name}: keep_db = {} does not hold, the gain is {gain_db} dB at {at_hz} Hz; {repair}",
+                figure(*keep_db)
+            ))
+        }
+        (Requirement::Keep { .. }, None) => Some(format!(
+            "{name}: the exceptions take out all of {from_hz} to {to_hz} Hz and leave nothing to keep; \
+             widen the band, narrow the stops, or take names out of except"
+        )),
+        (Requirement::Reduce { reduce_db }, _) if !has_stages => Some(format!(
+            "{name}: reduce_db = {} can't be reached, no stage filters anything at this rate; \
+             add a stage that takes out {from_hz} to {to_hz} Hz",
+            figure(*reduce_db)
+        )),
+        (Requirement::Reduce { reduce_db }, violation) => {
+            let at = violation.map_or_else(String::new, |violation| format!(" (at {} Hz)", figure(violation.at_hz)));
+            Some(format!(
+                "{name}: reduce_db = {} can't be reached, the largest attenuation from {from_hz} to {to_hz} Hz \
+                 is {} dB{at}; raise stop_db or order, widen the stop or move it onto the band, or lower reduce_db",
+                figure(*reduce_db),
+                decibel(band.attenuation_max_db)
+            ))
+        }
+        (Requirement::Residual { .. } | Requirement::Observe, _) => None,
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::figure;
+
+    #[test]
+    fn figures_have_no_trailing_zeros_and_no_negative_zero() {
+        let cases =
+            [(350.0, "350"), (15_931.666_666_67, "15931.666667"), (-0.000_000_1, "0"), (0.5, "0.5"), (-3.0, "-3")];
+        for (value, text) in cases {
+            assert_eq!(figure(value), text);
+        }
+    }
+}
