@@ -19,6 +19,7 @@
 //! * Multi-channel blocks are planar: one `Vec<f64>` a channel.
 //! * Spectra are one-sided sums over segments, periodic window, no detrending.
 
+pub mod cascade;
 pub mod design;
 pub mod section;
 pub mod spec;
