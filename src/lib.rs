@@ -21,5 +21,7 @@
 
 pub mod cascade;
 pub mod design;
+pub mod output;
 pub mod section;
 pub mod spec;
+pub mod wave;

@@ -1,0 +1,14 @@
+//! The WAV room: recordings built byte by byte, read, written, and read back.
+
+// Helpers of tests are tests too.
+#![allow(clippy::unwrap_used, clippy::panic)]
+
+mod build;
+mod run;
+
+mod chunks;
+mod damage;
+mod errors;
+mod figures;
+mod formats;
+mod rewriting;
