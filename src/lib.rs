@@ -24,4 +24,5 @@ pub mod design;
 pub mod output;
 pub mod section;
 pub mod spec;
+pub mod spectrum;
 pub mod wave;
