@@ -21,6 +21,7 @@
 
 pub mod cascade;
 pub mod design;
+pub mod evidence;
 pub mod output;
 pub mod section;
 pub mod spec;

@@ -1,0 +1,14 @@
+//! Verdicts and figures against recordings whose truth is known.
+
+// Helpers outside test functions may panic as test functions do.
+#![allow(clippy::unwrap_used)]
+
+mod chain;
+mod edges;
+mod floors;
+mod gains;
+mod grid;
+mod reference;
+mod support;
+mod traps;
+mod trials;
