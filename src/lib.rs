@@ -23,6 +23,7 @@ pub mod cascade;
 pub mod design;
 pub mod evidence;
 pub mod output;
+pub mod report;
 pub mod section;
 pub mod spec;
 pub mod spectrum;

@@ -1,0 +1,273 @@
+//! `designs`: the spec at one sample rate, what it promises, and what the witness saw.
+
+use super::{Db, Finite, Hz, NotFinite, Require, Seconds};
+use crate::design::check::CAP_DB;
+use crate::design::sections::{self, StageSize};
+use crate::design::{BandDesign, Check, Design, LeftOut, PlacedStage, Violation};
+use crate::section::Section;
+use crate::spec::Stage;
+use serde::{Deserialize, Serialize, Serializer, ser::Error};
+
+/// The spec at one sample rate.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct DesignEntry {
+    /// Sample rate.
+    pub rate_hz: u32,
+    /// Lines, stages and bands that do not fit below half the rate.
+    pub left_out: Vec<LeftOutEntry>,
+    /// What each stage became, in the spec's order, a row's lines one by one.
+    pub stages: Vec<StageEntry>,
+    /// The cascade in the order it runs, coefficients in full.
+    #[serde(serialize_with = "finite_sections")]
+    pub sections: Vec<Section>,
+    /// How often the cascade runs over the samples.
+    pub passes: u32,
+    /// Seconds until the tail of the impulse response no longer matters: figures of
+    /// recordings leave out as much at the start.
+    pub settling_s: Seconds,
+    /// Largest distance of a pole from zero; 0 for the identity, always below 1.
+    pub max_pole_radius: Finite,
+    /// Name and version of the dither, or `none`. It speaks of integer output;
+    /// float output is never dithered.
+    pub dither: String,
+    /// What the exact response promises in each band, in the spec's order.
+    pub bands: Vec<DesignBand>,
+    /// What an impulse sent through the same code showed; null where none was sent
+    /// (`design`).
+    pub witness: Option<WitnessEntry>,
+}
+
+/// Something that does not fit below half the sample rate.
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct LeftOutEntry {
+    /// The line, stage or band.
+    pub what: String,
+    /// Why, with figures.
+    pub reason: String,
+}
+
+/// One stage, or one line of a row, at one sample rate.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct StageEntry {
+    /// Place of the stage in the spec, 1 for the first.
+    pub stage: usize,
+    /// Number of the line in its row; null for a stage that is no row.
+    pub line: Option<u32>,
+    /// `lowpass`, `highpass`, `bandpass`, `bandstop` or `notch`.
+    pub kind: String,
+    /// `butterworth`, `chebyshev1`, `chebyshev2`, `elliptic` or `bessel`; null for a
+    /// notch, which is given by its poles and zeros directly.
+    pub family: Option<String>,
+    /// Order of the low-pass prototype; null for a notch.
+    pub order: Option<u32>,
+    /// Poles of the finished filter: twice `order` for band-pass and band-stop.
+    pub total_order: u32,
+    /// Second-order sections it takes.
+    pub sections: u32,
+    /// One edge, or the lower and the upper; a notch: its -3 dB points.
+    pub edges_hz: Vec<Hz>,
+    /// Ripple of the pass band; null for families without.
+    pub ripple_db: Option<Finite>,
+    /// Attenuation of the stop band; null for families without.
+    pub stop_db: Option<Finite>,
+}
+
+/// What the exact response promises in one band. Attenuations stop at 180 dB.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct DesignBand {
+    /// Name of the band; `xN` for line N of a row.
+    pub name: String,
+    /// Lower edge.
+    pub from_hz: Hz,
+    /// Upper edge.
+    pub to_hz: Hz,
+    /// What must hold; null for a band that is only observed.
+    pub require: Option<Require>,
+    /// Least attenuation anywhere in the band outside its exceptions.
+    pub attenuation_min_db: Db,
+    /// Largest attenuation anywhere in the band outside its exceptions.
+    pub attenuation_max_db: Db,
+    /// Start of the range in which the requirement of a reduce or residual band is
+    /// reached, which may begin below the band; null for other bands and where no
+    /// frequency reaches it.
+    pub reaches_from_hz: Option<Hz>,
+    /// End of that range.
+    pub reaches_to_hz: Option<Hz>,
+    /// Width of what is taken out of a keep band by its exceptions; 0 for other bands.
+    pub excepted_hz: Hz,
+    /// Group delay at the center; null for reduce and residual bands.
+    pub group_delay_s: Option<Seconds>,
+    /// Seconds until a steady line at the center is down by `reduce_db`; null for
+    /// other bands and for a line that never is.
+    pub startup_s: Option<Seconds>,
+    /// Length of the shortest recording in which the band can be judged; null
+    /// without a requirement.
+    pub shortest_s: Option<Seconds>,
+    /// Whether the design holds the requirement; null without one.
+    pub check: Option<CheckResult>,
+    /// Where the requirement fails; null unless `check` is `impossible`.
+    pub violation: Option<ViolationEntry>,
+}
+
+/// Whether the design can hold a requirement.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum CheckResult {
+    /// It holds everywhere in the band.
+    Guaranteed,
+    /// It depends on where in the band the energy lies, or how loud it is.
+    Depends,
+    /// A keep band is violated outside its exceptions, or no frequency of a reduce
+    /// band reaches its requirement.
+    Impossible,
+}
+
+/// The worst point of an impossible requirement.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct ViolationEntry {
+    /// Where.
+    pub at_hz: Hz,
+    /// Gain there, negative where the level falls.
+    pub gain_db: Db,
+}
+
+/// What an impulse showed that was filtered by the very code that filters recordings.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct WitnessEntry {
+    /// Whether it agrees with the sections' exact response.
+    pub agrees: bool,
+    /// The response seen in each band, in the spec's order.
+    pub bands: Vec<WitnessBand>,
+}
+
+/// The response of one band as the witness saw it, to be compared with [`DesignBand`].
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct WitnessBand {
+    /// Name of the band.
+    pub name: String,
+    /// Least attenuation in the band outside its exceptions; null where the
+    /// witness has no figure for the band.
+    pub attenuation_min_db: Option<Db>,
+    /// Largest attenuation in the band outside its exceptions; null likewise.
+    pub attenuation_max_db: Option<Db>,
+}
+
+impl DesignEntry {
+    /// The entry for `design`. `dither` is its name and version, or `none`.
+    ///
+    /// # Errors
+    /// A figure of the design is NaN or infinite.
+    pub fn new(design: &Design, dither: &str, witness: Option<WitnessEntry>) -> Result<Self, NotFinite> {
+        Ok(DesignEntry {
+            rate_hz: design.rate_hz,
+            left_out: design.left_out.iter().map(LeftOutEntry::from).collect(),
+            stages: design.stages.iter().map(StageEntry::new).collect::<Result<_, _>>()?,
+            sections: design.sections.clone(),
+            passes: 1,
+            settling_s: design.settling_s.try_into()?,
+            max_pole_radius: design.max_pole_radius.try_into()?,
+            dither: dither.to_owned(),
+            bands: design.bands.iter().map(DesignBand::new).collect::<Result<_, _>>()?,
+            witness,
+        })
+    }
+}
+
+impl From<&LeftOut> for LeftOutEntry {
+    fn from(left_out: &LeftOut) -> Self {
+        LeftOutEntry { what: left_out.what.clone(), reason: left_out.reason.clone() }
+    }
+}
+
+impl StageEntry {
+    /// The entry for one placed stage.
+    ///
+    /// # Errors
+    /// An edge, ripple or stop attenuation is NaN or infinite.
+    pub fn new(placed: &PlacedStage) -> Result<Self, NotFinite> {
+        let edges_hz = placed.edges_hz.iter().map(|&hz| hz.try_into()).collect::<Result<_, _>>()?;
+        let StageSize { total_order, sections } = sections::size(&placed.stage);
+        let entry = StageEntry {
+            stage: placed.stage_index + 1,
+            line: placed.harmonic,
+            kind: placed.stage.kind_name().to_owned(),
+            family: None,
+            order: None,
+            total_order,
+            sections,
+            edges_hz,
+            ripple_db: None,
+            stop_db: None,
+        };
+        let Stage::Filter(filter) = &placed.stage else { return Ok(entry) };
+        Ok(StageEntry {
+            family: Some(filter.family.name().to_owned()),
+            order: Some(filter.order),
+            ripple_db: filter.ripple_db.map(Finite::try_from).transpose()?,
+            stop_db: filter.stop_db.map(Finite::try_from).transpose()?,
+            ..entry
+        })
+    }
+}
+
+impl DesignBand {
+    /// The entry for one band.
+    ///
+    /// # Errors
+    /// A figure of the design is NaN or infinite.
+    pub fn new(design: &BandDesign) -> Result<Self, NotFinite> {
+        let (reaches_from_hz, reaches_to_hz) = match design.reaches_hz {
+            Some((from_hz, to_hz)) => (Some(from_hz.try_into()?), Some(to_hz.try_into()?)),
+            None => (None, None),
+        };
+        Ok(DesignBand {
+            name: design.band.name.clone(),
+            from_hz: design.band.line.from_hz.try_into()?,
+            to_hz: design.band.line.to_hz.try_into()?,
+            require: Require::new(&design.band.requirement)?,
+            attenuation_min_db: design.attenuation_min_db.try_into()?,
+            attenuation_max_db: design.attenuation_max_db.try_into()?,
+            reaches_from_hz,
+            reaches_to_hz,
+            excepted_hz: design.excepted_width_hz().try_into()?,
+            group_delay_s: design.group_delay_s.map(Seconds::try_from).transpose()?,
+            startup_s: design.startup_s.map(Seconds::try_from).transpose()?,
+            shortest_s: design.shortest_s.map(Seconds::try_from).transpose()?,
+            check: design.check.map(CheckResult::from),
+            violation: design.violation.map(ViolationEntry::new).transpose()?,
+        })
+    }
+}
+
+impl ViolationEntry {
+    /// # Errors
+    /// The frequency or the gain is NaN or infinite; a gain below -[`CAP_DB`] counts as that.
+    fn new(violation: Violation) -> Result<Self, NotFinite> {
+        Ok(ViolationEntry { at_hz: violation.at_hz.try_into()?, gain_db: violation.gain_db.max(-CAP_DB).try_into()? })
+    }
+}
+
+impl From<Check> for CheckResult {
+    fn from(check: Check) -> Self {
+        match check {
+            Check::Guaranteed => CheckResult::Guaranteed,
+            Check::Depends => CheckResult::Depends,
+            Check::Impossible => CheckResult::Impossible,
+        }
+    }
+}
+
+/// [`Section`] holds bare `f64`, for which serde_json would write null.
+fn finite_sections<S: Serializer>(sections: &[Section], serializer: S) -> Result<S::Ok, S::Error> {
+    match sections.iter().flat_map(|s| s.b.iter().chain(&s.a)).find(|c| !c.is_finite()) {
+        Some(&coefficient) => Err(S::Error::custom(NotFinite(coefficient))),
+        None => sections.serialize(serializer),
+    }
+}

@@ -1,0 +1,173 @@
+//! `recordings`: one entry a recording.
+
+use super::{BandEntry, Db, Finite, Hz, Seconds};
+use crate::wave::ChunkFate;
+use serde::{Deserialize, Serialize};
+
+/// One recording.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Recording {
+    /// Relative to the input root, `/` between components, percent-escaped where not UTF-8.
+    pub path: String,
+    /// Whether it was processed.
+    pub status: Status,
+    /// Why it failed, a sentence; null for a recording that is done.
+    pub error: Option<String>,
+    /// What was unusual, each a sentence.
+    pub notes: Vec<String>,
+    /// The input; null where its header could not be read.
+    pub input: Option<Input>,
+    /// The output; null for a failed recording.
+    pub output: Option<OutputFile>,
+    /// Chunks of the input in order.
+    pub chunks: Vec<ChunkEntry>,
+    /// How spectra were taken; null where none was.
+    pub spectrum: Option<SpectrumEntry>,
+    /// Always null: this program filtered the recording itself.
+    pub pair: Option<()>,
+    /// Figures and verdicts by channel; empty for a failed recording.
+    pub channels: Vec<ChannelEntry>,
+}
+
+/// Whether a recording was processed.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "lowercase")]
+pub enum Status {
+    /// Filtered, measured and written.
+    Done,
+    /// Not written; the error says why.
+    Failed,
+}
+
+/// The input of a recording.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Input {
+    /// SHA-256 of the file, lower-case hexadecimal; null where it was not read to its end.
+    pub sha256: Option<String>,
+    /// Length of the file.
+    pub bytes: u64,
+    /// Sample rate.
+    pub rate_hz: u32,
+    /// Channels.
+    pub channels: u16,
+    /// `pcm8`, `pcm16`, `pcm24`, `pcm32`, `float32` or `float64`.
+    pub encoding: String,
+    /// Frames.
+    pub frames: u64,
+    /// Frames over rate.
+    pub seconds: Seconds,
+    /// Runs of samples at full scale; null where it was not read to its end.
+    pub full_scale_runs: Option<u64>,
+}
+
+/// The output of a recording.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct OutputFile {
+    /// Relative to the output root, written like [`Recording::path`].
+    pub path: String,
+    /// SHA-256 of the file, lower-case hexadecimal.
+    pub sha256: String,
+    /// Length of the file.
+    pub bytes: u64,
+    /// As in [`Input::encoding`].
+    pub encoding: String,
+    /// Largest absolute sample as written, dB relative to full scale (1.0, so a
+    /// full-scale sine peaks at 0); null for silence.
+    pub peak_dbfs: Option<Db>,
+    /// Samples that were saturated.
+    pub clipped_samples: u64,
+    /// Gain in force: `output.gain_db`, or what `overload = "scale"` came to. In full,
+    /// not rounded, so that the output can be made again from it.
+    pub gain_db: Finite,
+}
+
+/// A chunk of the input.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct ChunkEntry {
+    /// Four bytes as characters; `%` and bytes outside printable ASCII as `%XX`.
+    pub id: String,
+    /// Bytes of its body.
+    pub bytes: u64,
+    /// Whether it stands in the output byte for byte.
+    pub kept: bool,
+}
+
+/// How a recording's spectra were taken.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct SpectrumEntry {
+    /// `blackman-harris-4`.
+    pub window: String,
+    /// Length of a segment.
+    pub segment_frames: usize,
+    /// Segments averaged.
+    pub segments: usize,
+    /// Distance of two bins.
+    pub bin_hz: Hz,
+    /// Seconds left out at the start.
+    pub skipped_s: Seconds,
+}
+
+/// Figures of one channel.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct ChannelEntry {
+    /// 1 for the first.
+    pub channel: u16,
+    /// The bands in the spec's order.
+    pub bands: Vec<BandEntry>,
+}
+
+impl Recording {
+    /// A recording that could not be processed: no output, no figures.
+    pub fn failed(path: impl Into<String>, error: impl Into<String>) -> Self {
+        Recording {
+            path: path.into(),
+            status: Status::Failed,
+            error: Some(error.into()),
+            notes: Vec::new(),
+            input: None,
+            output: None,
+            chunks: Vec::new(),
+            spectrum: None,
+            pair: None,
+            channels: Vec::new(),
+        }
+    }
+}
+
+impl ChunkEntry {
+    /// The entry for the chunk named by `id`.
+    pub fn new(id: [u8; 4], bytes: u64, kept: bool) -> Self {
+        let printable = |byte: &u8| (b' '..=b'~').contains(byte) && *byte != b'%';
+        let id = id
+            .iter()
+            .map(|byte| if printable(byte) { char::from(*byte).to_string() } else { format!("%{byte:02X}") })
+            .collect();
+        ChunkEntry { id, bytes, kept }
+    }
+}
+
+impl From<&ChunkFate> for ChunkEntry {
+    fn from(fate: &ChunkFate) -> Self {
+        ChunkEntry::new(fate.id, fate.bytes, fate.kept)
+    }
+}
+
+impl SpectrumEntry {
+    /// Spectra of `segments` segments of `segment_frames` frames, the first
+    /// `skipped_frames` left out; `None` for segments of no frames.
+    pub fn new(rate_hz: u32, segment_frames: usize, segments: usize, skipped_frames: u64) -> Option<Self> {
+        Some(SpectrumEntry {
+            window: "blackman-harris-4".to_owned(),
+            segment_frames,
+            segments,
+            bin_hz: Hz::new(f64::from(rate_hz) / segment_frames as f64)?,
+            skipped_s: Seconds::of_frames(skipped_frames, rate_hz),
+        })
+    }
+}

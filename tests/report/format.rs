@@ -1,0 +1,185 @@
+//! The keys, what they hold and their order, against types of their own: a key
+//! added, renamed or dropped by accident fails here.
+
+use crate::samples;
+use bandproof::report::{Recording, write_report};
+use bandproof::spec::Requirement;
+use serde::Deserialize;
+use std::collections::BTreeMap;
+
+macro_rules! mirror {
+    ($($name:ident { $($key:ident: $type:ty),* $(,)? })*) => {$(
+        #[derive(Debug, Deserialize)]
+        #[serde(deny_unknown_fields)]
+        #[allow(dead_code)] // reading them is the test
+        struct $name { $($key: $type),* }
+    )*};
+}
+
+mirror! {
+    Report {
+        report: String, format: u32, tool_version: String, level_reference: String, run: Run, complete: bool,
+        spec: Spec, designs: Vec<Design>, recordings: Vec<Entry>, summary: Summary,
+    }
+    Run { started: String, seconds: f64, jobs: u32, witness_deviation: Option<f64> }
+    Spec { title: Option<String>, file_sha256: String, normalized: serde_json::Value }
+    Design {
+        rate_hz: u32, left_out: Vec<LeftOut>, stages: Vec<Stage>, sections: Vec<Section>, passes: u32,
+        settling_s: f64, max_pole_radius: f64, dither: String, bands: Vec<DesignBand>, witness: Option<Witness>,
+    }
+    LeftOut { what: String, reason: String }
+    Stage {
+        stage: u32, line: Option<u32>, kind: String, family: Option<String>, order: Option<u32>, total_order: u32,
+        sections: u32, edges_hz: Vec<f64>, ripple_db: Option<f64>, stop_db: Option<f64>,
+    }
+    Section { b: [f64; 3], a: [f64; 3] }
+    DesignBand {
+        name: String, from_hz: f64, to_hz: f64, require: Option<BTreeMap<String, f64>>, attenuation_min_db: f64,
+        attenuation_max_db: f64, reaches_from_hz: Option<f64>, reaches_to_hz: Option<f64>, excepted_hz: f64,
+        group_delay_s: Option<f64>, startup_s: Option<f64>, shortest_s: Option<f64>, check: Option<String>,
+        violation: Option<Violation>,
+    }
+    Violation { at_hz: f64, gain_db: f64 }
+    Witness { agrees: bool, bands: Vec<WitnessBand> }
+    WitnessBand { name: String, attenuation_min_db: f64, attenuation_max_db: f64 }
+    Entry {
+        path: String, status: String, error: Option<String>, notes: Vec<String>, input: Option<Input>,
+        output: Option<Output>, chunks: Vec<Chunk>, spectrum: Option<Spectrum>, pair: (), channels: Vec<Channel>,
+    }
+    Input {
+        sha256: Option<String>, bytes: u64, rate_hz: u32, channels: u16, encoding: String, frames: u64,
+        seconds: f64, full_scale_runs: Option<u64>,
+    }
+    Output {
+        path: String, sha256: String, bytes: u64, encoding: String, peak_dbfs: Option<f64>, clipped_samples: u64,
+        gain_db: f64,
+    }
+    Chunk { id: String, bytes: u64, kept: bool }
+    Spectrum { window: String, segment_frames: u64, segments: u64, bin_hz: f64, skipped_s: f64 }
+    Channel { channel: u16, bands: Vec<Band> }
+    Band {
+        name: String, from_hz: f64, to_hz: f64, require: Option<BTreeMap<String, f64>>,
+        before_dbfs: Option<f64>, before_floor_dbfs: Option<f64>, after_dbfs: Option<f64>,
+        after_floor_dbfs: Option<f64>, measured_attenuation_db: Option<f64>,
+        demonstrable_attenuation_db: Option<f64>, line_hz: Option<f64>, line_before_dbfs: Option<f64>,
+        line_after_dbfs: Option<f64>, gain_min_db: Option<f64>, gain_max_db: Option<f64>,
+        gain_error_db: Option<f64>, resolved: Option<f64>, resolution_hz: Option<f64>, verdict: Option<String>,
+        reason_code: Option<String>, reason: Option<String>,
+    }
+    Summary {
+        recordings: u64, done: u64, failed: u64, skipped: Skipped, bands: Vec<BandSummary>, verdict: String,
+    }
+    Skipped { dot_underscore: u64, other_files: u64 }
+    BandSummary {
+        name: String, met: u64, missed: u64, unproven: u64, worst_db: Option<f64>, median_db: Option<f64>,
+    }
+}
+
+fn spec() -> bandproof::spec::Spec {
+    samples::spec(&[
+        ("pump hum x1", Requirement::Reduce { reduce_db: 30.0 }),
+        ("bird calls", Requirement::Keep { keep_db: 0.5, except: Vec::new() }),
+    ])
+}
+
+fn recordings() -> Vec<Recording> {
+    vec![
+        samples::done("station-a/0512.wav", vec![vec![samples::hum(), samples::calls()]]),
+        Recording::failed("station-b/0513.wav", "it holds no frames (empty)"),
+    ]
+}
+
+#[test]
+fn every_key_is_known_and_every_known_key_is_there() {
+    let bytes = samples::written(&spec(), &recordings());
+    let report: Report = serde_json::from_slice(&bytes).unwrap();
+    assert_eq!((report.report.as_str(), report.format, report.complete), ("bandproof", 1, true));
+    assert_eq!(report.level_reference, "0 dBFS is the level of a full-scale sine; not sound pressure");
+    assert_eq!(report.run.witness_deviation, Some(3.1e-11));
+    let design = &report.designs[0];
+    assert_eq!(design.sections[0].a[2], 0.1 + 0.2, "coefficients come back as the same bits");
+    assert_eq!(design.bands[0].check.as_deref(), Some("guaranteed"));
+    let entry = &report.recordings[0];
+    assert_eq!((entry.path.as_str(), entry.status.as_str()), ("station-a/0512.wav", "done"));
+    let spectrum = entry.spectrum.as_ref().unwrap();
+    assert_eq!((spectrum.window.as_str(), spectrum.bin_hz, spectrum.skipped_s), ("blackman-harris-4", 0.1, 2.2));
+    let [hum, calls] = entry.channels[0].bands.as_slice() else { panic!("two bands") };
+    assert_eq!(hum.require.as_ref().unwrap()["reduce_db"], 30.0);
+    assert_eq!(calls.require.as_ref().unwrap()["keep_db"], 0.5);
+    assert_eq!((calls.verdict.as_deref(), calls.reason_code.as_deref()), (Some("unproven"), Some("nothing-there")));
+    let failed = &report.recordings[1];
+    assert_eq!((failed.status.as_str(), failed.error.as_deref()), ("failed", Some("it holds no frames (empty)")));
+    assert!(failed.output.is_none() && failed.channels.is_empty());
+    assert_eq!((report.summary.done, report.summary.failed), (1, 1));
+    assert_eq!(report.summary.verdict, "unproven");
+}
+
+/// Keys of an object in the order in which they are written.
+fn keys(value: &serde_json::Value) -> Vec<&str> {
+    value.as_object().unwrap().keys().map(String::as_str).collect()
+}
+
+#[test]
+fn keys_stand_in_their_fixed_order() {
+    let report: serde_json::Value = serde_json::from_slice(&samples::written(&spec(), &recordings())).unwrap();
+    let top = "report format tool_version level_reference run complete spec designs recordings summary";
+    let design = "rate_hz left_out stages sections passes settling_s max_pole_radius dither bands witness";
+    let design_band = "name from_hz to_hz require attenuation_min_db attenuation_max_db reaches_from_hz \
+                       reaches_to_hz excepted_hz group_delay_s startup_s shortest_s check violation";
+    let recording = "path status error notes input output chunks spectrum pair channels";
+    let input = "sha256 bytes rate_hz channels encoding frames seconds full_scale_runs";
+    let output = "path sha256 bytes encoding peak_dbfs clipped_samples gain_db";
+    let band = "name from_hz to_hz require before_dbfs before_floor_dbfs after_dbfs after_floor_dbfs \
+                measured_attenuation_db demonstrable_attenuation_db line_hz line_before_dbfs line_after_dbfs \
+                gain_min_db gain_max_db gain_error_db resolved resolution_hz verdict reason_code reason";
+    let first = &report["recordings"][0];
+    for (value, expected) in [
+        (&report, top),
+        (&report["run"], "started seconds jobs witness_deviation"),
+        (&report["spec"], "title file_sha256 normalized"),
+        (&report["designs"][0], design),
+        (&report["designs"][0]["bands"][0], design_band),
+        (first, recording),
+        (&report["recordings"][1], recording),
+        (&first["input"], input),
+        (&first["output"], output),
+        (&first["chunks"][0], "id bytes kept"),
+        (&first["spectrum"], "window segment_frames segments bin_hz skipped_s"),
+        (&first["channels"][0]["bands"][0], band),
+        (&report["summary"], "recordings done failed skipped bands verdict"),
+        (&report["summary"]["bands"][0], "name met missed unproven worst_db median_db"),
+    ] {
+        assert_eq!(keys(value), expected.split_whitespace().collect::<Vec<_>>());
+    }
+}
+
+#[test]
+fn recordings_read_back_as_they_were_written() {
+    for recording in recordings() {
+        let text = serde_json::to_string(&recording).unwrap();
+        assert_eq!(serde_json::from_str::<Recording>(&text).unwrap(), recording);
+        let more = text.replacen('{', "{\"colour\": 1, ", 1);
+        assert!(serde_json::from_str::<Recording>(&more).unwrap_err().to_string().contains("colour"));
+    }
+}
+
+#[test]
+fn a_damaged_recording_is_an_error_that_says_which() {
+    let lines = [serde_json::to_string(&recordings()[0]).unwrap(), "{\"path\": \"b.wav\"}".to_owned()];
+    let (summary, _) =
+        bandproof::report::SummaryBuilder::new(&spec()).unwrap().finish(bandproof::report::Skipped::default());
+    let error = write_report(&mut Vec::new(), &samples::head(), lines.into_iter().map(Ok), &summary).unwrap_err();
+    assert_eq!(error.kind(), std::io::ErrorKind::InvalidData);
+    assert!(error.to_string().contains("entry 2"), "{error}");
+}
+
+#[test]
+fn a_coefficient_that_is_not_finite_never_becomes_null() {
+    let mut head = samples::head();
+    head.designs[0].sections[0].b[1] = f64::NAN;
+    let (summary, _) =
+        bandproof::report::SummaryBuilder::new(&spec()).unwrap().finish(bandproof::report::Skipped::default());
+    let error = write_report(&mut Vec::new(), &head, std::iter::empty(), &summary).unwrap_err();
+    assert_eq!(error.kind(), std::io::ErrorKind::InvalidData);
+    assert!(error.to_string().contains("NaN"), "{error}");
+}
