@@ -22,6 +22,7 @@
 pub mod cascade;
 pub mod design;
 pub mod evidence;
+pub mod job;
 pub mod output;
 pub mod report;
 pub mod section;

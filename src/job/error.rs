@@ -1,0 +1,165 @@
+//! Why a run can't start or can't end.
+
+use super::RecordingError;
+use crate::design::DesignError;
+use std::io;
+use std::path::PathBuf;
+
+/// Why a whole run failed. One recording's failure is an entry of the report instead.
+#[derive(Debug, thiserror::Error)]
+pub enum JobError {
+    /// IN does not exist or can't be looked at.
+    #[error("the input {path} can't be read: {cause}; give a folder of recordings or one recording")]
+    Input {
+        /// As given.
+        path: PathBuf,
+        /// The system's reason.
+        cause: io::Error,
+    },
+    /// `--include` or `--exclude` is no pattern.
+    #[error("the pattern `{pattern}` can't be used: {why}; `*` stands for part of a name, `**` for any folders")]
+    Pattern {
+        /// As given.
+        pattern: String,
+        /// What is wrong with it.
+        why: String,
+    },
+    /// Nothing to do.
+    #[error("no recordings in {path}: looked for names ending in .wav, .wave or .bwf and found {found}")]
+    NoRecordings {
+        /// The input.
+        path: PathBuf,
+        /// What was found instead.
+        found: String,
+    },
+    /// OUT is the input or lies inside it.
+    #[error(
+        "the output {output} is {relation} the input {input}: outputs must never mix with the originals; choose a folder elsewhere"
+    )]
+    OutputInInput {
+        /// The output as given.
+        output: PathBuf,
+        /// The input as given.
+        input: PathBuf,
+        /// `the same as` or `inside`.
+        relation: &'static str,
+    },
+    /// OUT exists and is no folder.
+    #[error("the output {0} is a file: give a folder, which is made if it does not exist")]
+    OutputIsFile(PathBuf),
+    /// A file to be written is one of the inputs or the spec, under whatever name.
+    #[error("{target} is the same file as {original}, which this run reads: choose another {what}")]
+    TouchesInput {
+        /// What would be written.
+        target: PathBuf,
+        /// What it would destroy.
+        original: PathBuf,
+        /// `output folder` or `--report`.
+        what: &'static str,
+    },
+    /// The report would stand where an output goes.
+    #[error("--report {0} is also the name of an output recording: choose another")]
+    ReportIsOutput(PathBuf),
+    /// A file would have to stand where a folder, a device or a pipe is.
+    #[error("{0} is there already and no regular file, so no file can take its name: choose another place")]
+    NotAFile(PathBuf),
+    /// Outputs or the report exist already.
+    #[error(
+        "{first} exists already{}: give --replace to overwrite, or choose another place",
+        others(*count)
+    )]
+    Exists {
+        /// How many.
+        count: usize,
+        /// The first in path order.
+        first: PathBuf,
+    },
+    /// A folder or the report's place can't be written to.
+    #[error("{what} {path} can't be written: {cause}; choose a place that exists and that you may write to")]
+    NotWritable {
+        /// `the output folder` or `the report`.
+        what: &'static str,
+        /// Where.
+        path: PathBuf,
+        /// The system's reason.
+        cause: io::Error,
+    },
+    /// The spec does not fit a sample rate of this input.
+    #[error("{cause}; the first recording with that rate is {recording}")]
+    Design {
+        /// A recording with that rate.
+        recording: String,
+        /// What does not fit.
+        cause: DesignError,
+    },
+    /// The design check found requirements that can't hold.
+    #[error("the spec can't hold, nothing was written:\n  {}", .0.join("\n  "))]
+    Impossible(Vec<String>),
+    /// The witness disagrees with the design: the tool's own error.
+    #[error(
+        "the witness at {rate_hz} Hz disagrees with the design by {deviation:.1e} of full scale at {at_hz:.3} Hz ({deviation_db:.1e} dB at \
+         most where the response is above -40 dB): this is a defect of this program, nothing was written; please report it with the spec"
+    )]
+    Witness {
+        /// The rate.
+        rate_hz: u32,
+        /// Largest complex deviation.
+        deviation: f64,
+        /// Where.
+        at_hz: f64,
+        /// Largest deviation in dB.
+        deviation_db: f64,
+    },
+    /// The witness could not be run at all.
+    #[error("the witness at {rate_hz} Hz could not be run: {cause}")]
+    NoWitness {
+        /// The rate.
+        rate_hz: u32,
+        /// Why.
+        cause: RecordingError,
+    },
+    /// Something that can't be came out.
+    #[error("{0}; this is a defect of this program, please report it with the spec")]
+    Defect(String),
+    /// No threads.
+    #[error("{jobs} threads could not be started: {cause}; give a smaller --jobs")]
+    Threads {
+        /// How many were asked for.
+        jobs: usize,
+        /// The system's reason.
+        cause: String,
+    },
+    /// Journal or report failed while or after recordings were written.
+    #[error("{what} {path} could not be written: {cause}; the recordings listed as done are complete")]
+    Record {
+        /// `the journal` or `the report`.
+        what: &'static str,
+        /// Where.
+        path: PathBuf,
+        /// The system's reason.
+        cause: io::Error,
+    },
+}
+
+/// How many files exist besides the first.
+fn others(count: usize) -> String {
+    match count {
+        ..2 => String::new(),
+        2 => " and so does one other file to be written".to_owned(),
+        _ => format!(" and so do {} other files to be written", count - 1),
+    }
+}
+
+impl JobError {
+    /// Whether the run was refused before anything was written (exit status 2).
+    pub fn is_refusal(&self) -> bool {
+        match self {
+            // The spec asks for more than can be checked.
+            JobError::NoWitness { cause, .. } => matches!(cause, RecordingError::RingsTooLong { .. }),
+            JobError::Witness { .. } | JobError::Defect(_) | JobError::Threads { .. } | JobError::Record { .. } => {
+                false
+            }
+            _ => true,
+        }
+    }
+}

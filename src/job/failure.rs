@@ -1,0 +1,41 @@
+//! Why one recording failed.
+
+use super::recording::RecordingError;
+use crate::report::NotFinite;
+use crate::wave::WaveError;
+use std::any::Any;
+use std::io;
+use std::panic::{AssertUnwindSafe, catch_unwind};
+
+/// Why one recording failed, beyond what [`super::recording::process`] can say.
+#[derive(Debug, thiserror::Error)]
+pub(super) enum Failure {
+    #[error("{0}")]
+    Header(String),
+    #[error(transparent)]
+    Recording(#[from] RecordingError),
+    #[error("can't be opened: {0}; see to its permissions, or leave the recording out")]
+    Open(io::Error),
+    #[error("its output can't be written: {0}; see to the folder's permissions and the room on the disk")]
+    Write(io::Error),
+    #[error("a figure came out as no number ({0}); this is a defect of this program")]
+    Figure(#[from] NotFinite),
+    #[error("processing stopped with a defect of this program: {0}")]
+    Panic(String),
+}
+
+impl From<WaveError> for Failure {
+    fn from(error: WaveError) -> Self {
+        Failure::Recording(error.into())
+    }
+}
+
+/// Runs `work`; a panic in it is a failure of that recording, not of the run.
+pub(super) fn contained<T>(work: impl FnOnce() -> Result<T, Failure>) -> Result<T, Failure> {
+    catch_unwind(AssertUnwindSafe(work)).unwrap_or_else(|panic| Err(Failure::Panic(panic_text(panic.as_ref()))))
+}
+
+fn panic_text(panic: &(dyn Any + Send)) -> String {
+    let text = panic.downcast_ref::<&str>().map(ToString::to_string);
+    text.or_else(|| panic.downcast_ref::<String>().cloned()).unwrap_or_default()
+}

@@ -1,0 +1,377 @@
+//! One recording from bytes to bytes and verdicts.
+//!
+//! [`process`] is the only way samples go through the tool: recordings and the
+//! witness alike.
+
+use super::collector::{Collector, Segment};
+use crate::cascade::{Cascade, Filter};
+use crate::evidence::{self, BandFigures, BandTask, Measured};
+use crate::output::{Output, OutputFigures, OutputPlan};
+use crate::spec::{Overload, Requirement};
+use crate::spectrum::{Accumulator, SegmentPlan, Spectra, TransformCache, segment_frames};
+use crate::wave::{Header, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
+use std::io::{self, Read, Seek, SeekFrom, Write};
+use std::sync::Arc;
+
+/// Frames filtered at a time: a block of every plane stays in the second-level cache.
+const BLOCK_FRAMES: usize = 16_384;
+/// Samples of all channels in a block at most: 32 MB on each side, whatever number of
+/// channels a header claims.
+const BLOCK_SAMPLES: usize = 1 << 22;
+
+/// What is done to the recordings of one sample rate.
+#[derive(Clone, Debug)]
+pub struct Treatment {
+    /// The filter.
+    pub cascade: Arc<Cascade>,
+    /// Nothing is done to the samples: they pass bit for bit.
+    pub identity: bool,
+    /// Frames at the start that figures leave out.
+    pub settling_frames: u64,
+    /// Bands to be judged.
+    pub bands: Vec<BandTask>,
+    /// Format of the output; `None` for the input's own.
+    pub format: Option<SampleFormat>,
+    /// Whether integer output is dithered.
+    pub dither: bool,
+    /// What happens when samples exceed full scale.
+    pub overload: Overload,
+    /// Gain for the whole dataset, dB.
+    pub gain_db: f64,
+    /// Windows and transforms that recordings share.
+    pub transforms: Arc<TransformCache>,
+}
+
+/// What came of a recording.
+#[derive(Clone, Debug)]
+pub struct Processed {
+    /// The input, read to its end.
+    pub input: InputFigures,
+    /// The output, written to its end.
+    pub written: WrittenFigures,
+    /// Format of the output.
+    pub format: SampleFormat,
+    /// Samples on their way out.
+    pub output: OutputFigures,
+    /// Gain in force, dB.
+    pub gain_db: f64,
+    /// Whether `overload = "scale"` filtered a second time.
+    pub scaled: bool,
+    /// Segment length and count; `None` where nothing was measured.
+    pub segments: Option<(usize, usize)>,
+    /// Figures by channel, then by band.
+    pub channels: Vec<Vec<BandFigures>>,
+}
+
+/// Why a recording could not be processed.
+#[derive(Debug, thiserror::Error)]
+pub enum RecordingError {
+    /// Its bytes can't be read or its output can't be written.
+    #[error(transparent)]
+    Wave(#[from] WaveError),
+    /// Filtered samples exceed full scale under `overload = "refuse"`.
+    #[error(
+        "filtered samples peak at {peak_db:+.2} dB relative to full scale, and {clipped} of them do not fit {encoding}: {repair}"
+    )]
+    Overload {
+        /// Largest sample relative to full scale, dB; slightly negative where it does not
+        /// round to the highest step.
+        peak_db: f64,
+        /// The format that can't hold it.
+        encoding: &'static str,
+        /// Samples that do not fit.
+        clipped: u64,
+        /// Keys of the spec that would help.
+        repair: String,
+        /// The input, which was read to its end all the same.
+        input: Box<InputFigures>,
+    },
+    /// The filter rings for longer than the witness can follow.
+    #[error(
+        "the filter rings for {seconds:.0} s, longer than the {longest_s:.0} s that can be followed; \
+         widen the narrowest stage, or move its edges away from 0 Hz and half the sample rate"
+    )]
+    RingsTooLong {
+        /// How long, seconds.
+        seconds: f64,
+        /// The longest that can be followed, seconds.
+        longest_s: f64,
+    },
+    /// The witness's impulse recording can't be made.
+    #[error("the impulse recording could not be written: {0}")]
+    Impulse(String),
+    /// The output can't be started again for `overload = "scale"`.
+    #[error("the output can't be rewound to be written with another gain: {0}")]
+    Rewind(io::Error),
+}
+
+/// Filters `input` into `sink` and measures both sides.
+///
+/// `advanced` hears how many input bytes went through, block by block.
+pub fn process<R: Read + Seek + Send, W: Write + Seek + Send>(
+    mut input: Reader<R>,
+    mut sink: W,
+    treatment: &Treatment,
+    advanced: &(dyn Fn(u64) + Sync),
+) -> Result<(W, Processed), RecordingError> {
+    let first = run(&mut input, &mut sink, treatment, treatment.gain_db, advanced)?;
+    if first.output.clipped_samples == 0 || treatment.overload == Overload::Clip {
+        return Ok((sink, first));
+    }
+    let over_db = 20.0 * libm::log10(first.output.peak);
+    if treatment.overload == Overload::Refuse {
+        return Err(RecordingError::Overload {
+            peak_db: over_db,
+            encoding: first.format.encoding.name(),
+            clipped: first.output.clipped_samples,
+            repair: overload_repair(treatment.gain_db, over_db, first.format),
+            input: Box::new(first.input),
+        });
+    }
+    let gain_db = fitting_gain_db(treatment.gain_db, over_db, first.format);
+    input.rewind();
+    sink.seek(SeekFrom::Start(0)).map_err(RecordingError::Rewind)?;
+    let mut second = run(&mut input, &mut sink, treatment, gain_db, &|_| ())?;
+    second.scaled = true;
+    Ok((sink, second))
+}
+
+/// What to write into the spec so that a recording fits.
+fn overload_repair(gain_db: f64, over_db: f64, format: SampleFormat) -> String {
+    if format.encoding.is_float() {
+        return "set [output] encoding = \"float64\", whose range is larger, or a lower gain_db".into();
+    }
+    // A tenth of a dB leaves room for full scale less one step, for 8 bits too.
+    let fitting_db = libm::floor(gain_db - over_db - 0.1);
+    format!("set [output] encoding = \"float32\", gain_db = {fitting_db}, or overload = \"clip\" or \"scale\"")
+}
+
+/// The largest gain in whole thousandths of a dB with which the peak and its dither
+/// (at most one step) stay below full scale less one step. With three bits or fewer that
+/// leaves no room: then the peak is taken to a quarter, which rounds to no more than the
+/// highest step.
+fn fitting_gain_db(gain_db: f64, over_db: f64, format: SampleFormat) -> f64 {
+    let room_db = 20.0 * libm::log10((1.0 - 3.0 * format.step()).max(0.25));
+    libm::floor((gain_db - over_db + room_db) * 1000.0) / 1000.0
+}
+
+fn run<R: Read + Seek + Send, W: Write + Send>(
+    input: &mut Reader<R>,
+    sink: &mut W,
+    treatment: &Treatment,
+    gain_db: f64,
+    advanced: &(dyn Fn(u64) + Sync),
+) -> Result<Processed, RecordingError> {
+    let header = input.header().clone();
+    let channels = usize::from(header.channels);
+    let format = treatment.format.unwrap_or(header.format);
+    let gain = libm::exp10(gain_db / 20.0);
+    let plan = plan_segments(&header, treatment);
+
+    let mut stream = Stream {
+        writer: Writer::begin(sink, input, format)?,
+        input,
+        filter: Filter::new(Arc::clone(&treatment.cascade), channels),
+        output: Output::new(
+            OutputPlan {
+                format,
+                dither: treatment.dither,
+                gain,
+                identity: treatment.identity && format == header.format,
+            },
+            channels,
+        ),
+        before: vec![Vec::new(); channels],
+        after: vec![Vec::new(); channels],
+        collector: plan.clone().map(|plan| {
+            let transform = treatment.transforms.get(plan.segment_frames);
+            Collector::new(plan, transform, channels)
+        }),
+        frame_bytes: header.data_bytes / header.frames.max(1),
+        ended: false,
+    };
+    let spectra = stream.measure(plan.as_ref(), treatment, &header, advanced)?;
+    stream.run_out(advanced)?;
+    let Stream { writer, input, output, .. } = stream;
+    let (_, written) = writer.finish(input)?;
+    let figures = Processed {
+        input: input.finish()?,
+        written,
+        format,
+        output: output.figures(),
+        gain_db,
+        scaled: false,
+        segments: plan.as_ref().map(|plan| (plan.segment_frames, plan.starts.len())),
+        channels: Vec::new(),
+    };
+    let independent = plan.as_ref().map_or(0, SegmentPlan::independent_segments);
+    let channels = judge(&figures, &spectra, independent, treatment, &header, gain);
+    Ok(Processed { channels, ..figures })
+}
+
+/// Where the segments of a recording lie; `None` where nothing is settled or less
+/// than the shortest segment.
+fn plan_segments(header: &Header, treatment: &Treatment) -> Option<SegmentPlan> {
+    let length = treatment.segment_frames(header.rate_hz, header.frames)?;
+    Some(SegmentPlan::spread(length, treatment.settling_frames..header.frames))
+}
+
+impl Treatment {
+    /// Length of the segments for a recording; `None` where nothing is measured.
+    ///
+    /// The narrowest band decides (of those with a requirement, if any has one). Gains
+    /// also need segments at least as long as the filter rings: what it delays out of a
+    /// segment is missing there.
+    pub fn segment_frames(&self, rate_hz: u32, frames: u64) -> Option<usize> {
+        let settled = frames.checked_sub(self.settling_frames).filter(|&settled| settled > 0)?;
+        let width = |band: &BandTask| band.to_hz - band.from_hz;
+        let judged = self.bands.iter().filter(|band| band.requirement != Requirement::Observe).map(width);
+        let narrowest = judged.reduce(f64::min).or(self.bands.iter().map(width).reduce(f64::min))?;
+        let rings = self.settling_frames > 0 && self.bands.iter().any(|band| evidence::shows_gains(&band.requirement));
+        let ringing_hz = if rings { 10.0 * f64::from(rate_hz) / self.settling_frames as f64 } else { f64::INFINITY };
+        segment_frames(rate_hz, Some(narrowest.min(ringing_hz)), settled)
+    }
+}
+
+fn judge(
+    figures: &Processed,
+    spectra: &[Spectra],
+    independent_segments: usize,
+    treatment: &Treatment,
+    header: &Header,
+    gain: f64,
+) -> Vec<Vec<BandFigures>> {
+    let seconds = header.frames as f64 / f64::from(header.rate_hz);
+    if spectra.is_empty() {
+        let unsettled = || treatment.bands.iter().map(|band| evidence::unsettled(seconds, band)).collect();
+        return (0..header.channels).map(|_| unsettled()).collect();
+    }
+    let one = |(channel, spectra): (usize, &Spectra)| {
+        let measured = Measured {
+            rate_hz: header.rate_hz,
+            seconds,
+            spectra,
+            independent_segments,
+            rounding_power_before: figures.input.rounding_power[channel],
+            rounding_power_after: figures.output.rounding_power[channel],
+            gain,
+        };
+        evidence::judge_all(&measured, &treatment.bands)
+    };
+    spectra.iter().enumerate().map(one).collect()
+}
+
+/// A recording on its way through, block by block.
+struct Stream<'a, R, W> {
+    input: &'a mut Reader<R>,
+    writer: Writer<W>,
+    filter: Filter,
+    output: Output,
+    before: Vec<Vec<f64>>,
+    after: Vec<Vec<f64>>,
+    collector: Option<Collector>,
+    frame_bytes: u64,
+    ended: bool,
+}
+
+impl<R: Read + Seek + Send, W: Write + Send> Stream<'_, R, W> {
+    /// Streams until the last segment is transformed; the spectra by channel.
+    fn measure(
+        &mut self,
+        plan: Option<&SegmentPlan>,
+        treatment: &Treatment,
+        header: &Header,
+        advanced: &(dyn Fn(u64) + Sync),
+    ) -> Result<Vec<Spectra>, RecordingError> {
+        let Some(plan) = plan else { return Ok(Vec::new()) };
+        let length = plan.segment_frames;
+        let cross = evidence::cross_ranges(header.rate_hz, length, &treatment.bands);
+        let transform = treatment.transforms.get(length);
+        let accumulator = |_| Accumulator::new(Arc::clone(&transform), cross.clone());
+        let mut sums: Vec<Accumulator> = (0..header.channels).map(accumulator).collect();
+        let mut full: Option<Segment> = None;
+        for _ in 0..plan.starts.len() {
+            let (filled, ()) = rayon::join(|| self.fill(advanced), || add_segment(&mut sums, full.take()));
+            filled?;
+            full = self.collector.as_mut().and_then(Collector::next_ready);
+        }
+        add_segment(&mut sums, full);
+        self.collector = None;
+        Ok(sums.into_iter().map(Accumulator::finish).collect())
+    }
+
+    /// Streams until the next segment is complete.
+    fn fill(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
+        while !self.ended && !self.collector.as_ref().is_none_or(Collector::is_ready) {
+            self.step(advanced)?;
+        }
+        Ok(())
+    }
+
+    /// Streams to the end without measuring.
+    fn run_out(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
+        while !self.ended {
+            self.step(advanced)?;
+        }
+        Ok(())
+    }
+
+    /// One block: read, filter, shape, write.
+    fn step(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
+        self.before.iter_mut().for_each(Vec::clear);
+        self.after.iter_mut().for_each(Vec::clear);
+        let frames = self.input.read(block_frames(self.before.len()), &mut self.before)?;
+        if frames > 0 {
+            self.filter.process(&self.before, &mut self.after);
+        } else {
+            self.filter.finish(&mut self.after);
+            self.ended = true;
+        }
+        self.output.shape(&mut self.after);
+        self.writer.write(&self.after)?;
+        if let Some(collector) = &mut self.collector {
+            collector.take(&self.before, &self.after);
+        }
+        advanced(frames as u64 * self.frame_bytes);
+        Ok(())
+    }
+}
+
+fn block_frames(channels: usize) -> usize {
+    BLOCK_FRAMES.min(BLOCK_SAMPLES / channels.max(1)).max(1)
+}
+
+fn add_segment(sums: &mut [Accumulator], segment: Option<Segment>) {
+    for (sum, packed) in sums.iter_mut().zip(segment.into_iter().flatten()) {
+        sum.add_packed(packed);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::wave::Encoding;
+
+    #[test]
+    fn the_gain_that_fits_does_so_at_every_depth() {
+        let (gain_db, peak) = (3.0, 1.7);
+        for valid_bits in 1..=32 {
+            let format = SampleFormat { encoding: Encoding::Pcm32, valid_bits };
+            let fitting_db = fitting_gain_db(gain_db, 20.0 * libm::log10(peak), format);
+            let steps = peak * libm::exp10((fitting_db - gain_db) / 20.0) / format.step();
+            let highest = 1.0 / format.step() - 1.0;
+            assert!(libm::rint(steps) <= highest, "{valid_bits} bits: {steps} steps, at most {highest}");
+            // Dither takes up to one step more.
+            assert!(valid_bits <= 3 || libm::rint(steps + 1.0) <= highest, "{valid_bits} bits: {steps} steps");
+        }
+    }
+
+    #[test]
+    fn blocks_of_any_number_of_channels_are_bounded() {
+        for channels in [0, 1, 2, 256, 257, 65_535] {
+            let frames = block_frames(channels);
+            assert!(frames >= 1 && frames * channels <= BLOCK_SAMPLES, "{channels} channels: {frames} frames");
+        }
+        assert_eq!((block_frames(2), block_frames(65_535)), (BLOCK_FRAMES, 64));
+    }
+}
