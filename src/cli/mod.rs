@@ -1,0 +1,44 @@
+//! The command line: arguments, progress, tables. Nothing is computed here.
+
+mod args;
+mod color;
+mod design;
+mod design_text;
+mod exit;
+mod filter;
+mod interrupt;
+mod names;
+mod plan_text;
+mod progress;
+mod screen;
+mod summary_text;
+mod table;
+mod units;
+
+use args::{Cli, Command};
+use clap::Parser;
+use clap::error::ErrorKind;
+pub use exit::Exit;
+use screen::{complain_of_usage, print, show_help};
+use std::ffi::OsString;
+
+/// Width that no line of a table or summary exceeds unless a single word does.
+const WIDTH: usize = 100;
+
+/// Runs the command that `arguments` ask for, the program's name first.
+pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Exit {
+    match Cli::try_parse_from(arguments) {
+        Ok(Cli { command: Command::Filter(arguments) }) => filter::run(&arguments),
+        Ok(Cli { command: Command::Design(arguments) }) => design::run(&arguments),
+        Err(answer) if answer.use_stderr() => {
+            let text = answer.render().to_string();
+            match answer.kind() {
+                ErrorKind::DisplayHelpOnMissingArgumentOrSubcommand => show_help(&text),
+                _ => complain_of_usage(text.trim_start_matches("error: ")),
+            }
+            Exit::Refused
+        }
+        // Help and version arrive as errors that go to stdout.
+        Err(answer) => print(&answer.render().to_string(), Exit::Done),
+    }
+}

@@ -1,0 +1,325 @@
+//! The summary of a run for people.
+
+use super::color::{Palette, Style};
+use super::table::{Table, wrapped};
+use super::units::{bytes, counted, seconds, trimmed};
+use super::{WIDTH, names};
+use bandproof::job::Outcome;
+use bandproof::report::{
+    BandSummary, Db, DesignBand, DesignEntry, MissedItem, NotFinite, ReasonCode, Require, Summary, UnprovenItem,
+    Verdict,
+};
+use bandproof::spec::Spec;
+use std::collections::HashMap;
+
+/// Requirement of each band by name.
+type Requirements = HashMap<String, Option<Require>>;
+
+/// The whole summary.
+pub fn text(spec: &Spec, outcome: &Outcome, palette: Palette) -> String {
+    let requirements = requirements(spec).unwrap_or_default();
+    let parts = [
+        done(outcome),
+        bands(&outcome.summary, &requirements, palette),
+        missed(&outcome.highlights.missed, palette),
+        failed(outcome, palette),
+        unproven(outcome, palette),
+        startup(&outcome.designs, palette),
+        closing(outcome, palette),
+    ];
+    let parts: Vec<_> = parts.into_iter().filter(|part| !part.is_empty()).collect();
+    parts.join("\n")
+}
+
+fn requirements(spec: &Spec) -> Result<Requirements, NotFinite> {
+    spec.named_bands().map(|band| Ok((band.name, Require::new(&band.requirement)?))).collect()
+}
+
+/// `down by 30 dB`, `within 0.5 dB`, `at most -90 dBFS`, or a dash.
+pub fn required(require: Option<Require>) -> String {
+    match require {
+        Some(Require::ReduceDb(limit)) => format!("down by {} dB", trimmed(limit.get(), 3)),
+        Some(Require::KeepDb(limit)) => format!("within {} dB", trimmed(limit.get(), 3)),
+        Some(Require::ResidualDbfs(limit)) => format!("at most {} dBFS", trimmed(limit.get(), 3)),
+        None => "-".to_owned(),
+    }
+}
+
+fn done(outcome: &Outcome) -> String {
+    let Summary { recordings, done, failed, skipped, .. } = &outcome.summary;
+    let rate = if outcome.seconds > 0.0 {
+        format!(", {} a second", bytes((outcome.bytes_read as f64 / outcome.seconds) as u64))
+    } else {
+        String::new()
+    };
+    let failed = if *failed > 0 { format!(", {failed} failed") } else { String::new() };
+    let first = format!(
+        "{done} of {} filtered and measured{failed}: {} read in {}{rate}.",
+        counted(*recordings, "recording"),
+        bytes(outcome.bytes_read),
+        seconds(outcome.seconds),
+    );
+    let mut text = wrapped(&first, 0, 0, WIDTH);
+    if !outcome.complete {
+        let others = counted(outcome.not_begun, "recording");
+        let line = format!("Interrupted with {others} not begun: what follows leaves them out.");
+        text.push_str(&wrapped(&line, 0, 0, WIDTH));
+    }
+    let mut left = Vec::new();
+    if skipped.other_files > 0 {
+        left.push(format!("{} not copied", counted(skipped.other_files, "other file")));
+    }
+    if skipped.dot_underscore > 0 {
+        left.push(format!("{} with a name that begins with \"._\" skipped", counted(skipped.dot_underscore, "file")));
+    }
+    if !left.is_empty() {
+        text.push_str(&wrapped(&format!("{}.", left.join(", ")), 0, 0, WIDTH));
+    }
+    text
+}
+
+fn bands(summary: &Summary, requirements: &Requirements, palette: Palette) -> String {
+    if summary.bands.is_empty() {
+        return wrapped("The spec names no bands, so nothing was judged.", 0, 0, WIDTH);
+    }
+    let mut table = Table::new([
+        ("Band", false),
+        ("required", false),
+        ("figure", false),
+        ("worst dB", true),
+        ("median dB", true),
+        ("met", true),
+        ("missed", true),
+        ("unproven", true),
+    ]);
+    for band in &summary.bands {
+        let require = requirements.get(&band.name).copied().flatten();
+        let mut row = figures(band, require);
+        row.extend(counts(band, require));
+        table.row(row);
+    }
+    table.render(palette, 0, WIDTH)
+}
+
+fn figures(band: &BandSummary, require: Option<Require>) -> Vec<(String, Style)> {
+    let figure = match require {
+        Some(Require::ReduceDb(_)) => "attenuation",
+        Some(Require::ResidualDbfs(_)) => "level left",
+        Some(Require::KeepDb(_)) | None => "gain",
+    };
+    let db = |figure: Option<Db>| figure.map_or("-".to_owned(), |db| format!("{:.3}", db.get()));
+    let worst_style = if band.missed > 0 { Style::Bad } else { Style::Plain };
+    let plain = |text: String| (text, Style::Plain);
+    vec![
+        plain(band.name.clone()),
+        plain(required(require)),
+        plain(figure.to_owned()),
+        (db(band.worst_db), worst_style),
+        plain(db(band.median_db)),
+    ]
+}
+
+fn counts(band: &BandSummary, require: Option<Require>) -> [(String, Style); 3] {
+    [(band.met, Verdict::Met), (band.missed, Verdict::Missed), (band.unproven, Verdict::Unproven)].map(
+        |(count, verdict)| match (count, require) {
+            (_, None) => ("-".to_owned(), Style::Plain),
+            (0, _) => ("0".to_owned(), Style::Plain),
+            _ => (count.to_string(), Style::from(verdict)),
+        },
+    )
+}
+
+fn heading(text: &str, style: Style, palette: Palette) -> String {
+    format!("{}\n", palette.paint(style, text))
+}
+
+fn missed(items: &[MissedItem], palette: Palette) -> String {
+    if items.is_empty() {
+        return String::new();
+    }
+    let mut text = heading("Missed", Style::Bad, palette);
+    let alike = |one: &MissedItem, next: &MissedItem| {
+        (&one.path, one.channel, one.require, &one.reason) == (&next.path, next.channel, next.require, &next.reason)
+    };
+    for row in names::rows(items, |item| &item.band, alike) {
+        let (Some(first), Some(last)) = (row.first(), row.last()) else { continue };
+        let MissedItem { path, channel, band, .. } = first;
+        let (bands, reason) = (names::span(band, &last.band), in_brackets(first.reason.as_deref()));
+        let line = format!("{path}, channel {channel}, {bands}: {}{reason}", shortfall(first.require, row));
+        text.push_str(&wrapped(&line, 2, 6, WIDTH));
+    }
+    text
+}
+
+/// What was found and what had to be, with the report's own digits: 29.996 dB is
+/// not 30.
+fn shortfall(require: Option<Require>, row: &[MissedItem]) -> String {
+    let figures = || row.iter().filter_map(|item| item.figure_db).map(Db::get);
+    let (Some(low), Some(high)) = (figures().reduce(f64::min), figures().reduce(f64::max)) else {
+        return "missed".to_owned();
+    };
+    let (low, high) = (trimmed(low, 3), trimmed(high, 3));
+    let figure = if low == high { low } else { format!("{low} to {high}") };
+    match require {
+        Some(Require::ReduceDb(limit)) => format!("down by {figure} dB, {} dB required", trimmed(limit.get(), 3)),
+        Some(Require::KeepDb(limit)) => {
+            format!("gain {figure} dB, at most {} dB either way allowed", trimmed(limit.get(), 3))
+        }
+        Some(Require::ResidualDbfs(limit)) => {
+            format!("{figure} dBFS left, at most {} dBFS allowed", trimmed(limit.get(), 3))
+        }
+        None => "missed".to_owned(),
+    }
+}
+
+/// A sentence of the report within one of ours.
+fn in_brackets(sentence: Option<&str>) -> String {
+    sentence.map_or(String::new(), |sentence| format!(" ({})", sentence.trim_end_matches('.')))
+}
+
+fn failed(outcome: &Outcome, palette: Palette) -> String {
+    let items = &outcome.highlights.failed;
+    if items.is_empty() {
+        return String::new();
+    }
+    let mut text = heading("Failed, nothing written for these", Style::Bad, palette);
+    for item in items {
+        text.push_str(&wrapped(&format!("{}: {}", item.path, item.error), 2, 6, WIDTH));
+    }
+    text
+}
+
+fn unproven(outcome: &Outcome, palette: Palette) -> String {
+    let items = &outcome.highlights.unproven;
+    if items.is_empty() {
+        return String::new();
+    }
+    let mut text = heading("Unproven, and what it would take", Style::Open, palette);
+    // By reason first: the lines of a row can then be told together although some of
+    // them are unproven for another reason too.
+    let mut items: Vec<&UnprovenItem> = items.iter().collect();
+    items.sort_by_key(|item| item.reason_code);
+    for row in names::rows(&items, |item| &item.band, |one, next| one.reason_code == next.reason_code) {
+        if let (Some(first), Some(last)) = (row.first(), row.last()) {
+            text.push_str(&unproven_line(first, last, row, &outcome.designs));
+        }
+    }
+    text
+}
+
+fn unproven_line(first: &UnprovenItem, last: &UnprovenItem, row: &[&UnprovenItem], designs: &[DesignEntry]) -> String {
+    let fewest = row.iter().map(|item| item.recordings).min().unwrap_or(0);
+    let most = row.iter().map(|item| item.recordings).max().unwrap_or(0);
+    let count = if fewest == most { counted(most, "recording") } else { format!("{fewest} to {most} recordings") };
+    let shortest_s = row.iter().filter_map(|item| longest(designs, &item.band)).reduce(f64::max);
+    // A length that some of them have already is not what they lack.
+    let longest_s = row.iter().filter_map(|item| item.longest_s).map(|s| s.get()).reduce(f64::max);
+    let shortest_s = shortest_s.filter(|&shortest_s| longest_s.is_none_or(|longest_s| longest_s < shortest_s));
+    let reason = first.example_reason.as_ref().map_or(String::new(), |reason| {
+        let UnprovenItem { example_path: path, example_channel: channel, band, .. } = first;
+        format!(" The first, {path}, channel {channel}, {band}: {}.", reason.trim_end_matches('.'))
+    });
+    let line = format!(
+        "{} in {count}. Needed: {}.{reason}",
+        names::span(&first.band, &last.band),
+        needed(first.reason_code, shortest_s),
+    );
+    wrapped(&line, 2, 6, WIDTH)
+}
+
+/// The length a recording must have at any of the rates for `band` to be judged.
+fn longest(designs: &[DesignEntry], band: &str) -> Option<f64> {
+    let bands = designs.iter().flat_map(|design| &design.bands).filter(|entry| entry.name == band);
+    bands.filter_map(|entry| entry.shortest_s).map(|s| s.get()).reduce(f64::max)
+}
+
+fn needed(code: Option<ReasonCode>, shortest_s: Option<f64>) -> String {
+    let length = || match shortest_s {
+        // Rounded up: a recording as long as is said here must do.
+        Some(s) => format!("longer recordings, of {} s at the least", trimmed((s * 10.0).ceil() / 10.0, 1)),
+        None => "longer recordings".to_owned(),
+    };
+    match code {
+        Some(ReasonCode::NothingThere) => {
+            "recordings that hold something in this band; a limit on what remains (residual_dbfs) needs none".to_owned()
+        }
+        Some(ReasonCode::TooShort | ReasonCode::Unsettled) => length(),
+        Some(ReasonCode::TooQuiet) => {
+            "a louder signal in this band, or output in finer steps (encoding = \"pcm24\" or \"float32\")".to_owned()
+        }
+        Some(ReasonCode::LoudNeighbor) => "recordings with less sound just outside this band".to_owned(),
+        Some(ReasonCode::OutOfRange) => "a band inside the range that the sample rate can carry".to_owned(),
+        None => "see the report".to_owned(),
+    }
+}
+
+/// What a user must know although no verdict speaks of it: the filter needs time to
+/// take hold of a line.
+fn startup(designs: &[DesignEntry], palette: Palette) -> String {
+    let mut told: Vec<(String, Vec<u32>)> = Vec::new();
+    for design in designs {
+        for line in startup_lines(design) {
+            match told.iter_mut().find(|(known, _)| *known == line) {
+                Some((_, rates)) => rates.push(design.rate_hz),
+                None => told.push((line, vec![design.rate_hz])),
+            }
+        }
+    }
+    if told.is_empty() {
+        return String::new();
+    }
+    let mut text = heading("At the start of each recording", Style::Heading, palette);
+    for (line, rates) in told {
+        // Most often it is the same at every rate.
+        let at = if rates.len() == designs.len() { String::new() } else { format!(" (at {} Hz)", listed(&rates)) };
+        text.push_str(&wrapped(&format!("{line}{at}."), 2, 6, WIDTH));
+    }
+    text
+}
+
+fn startup_lines(design: &DesignEntry) -> Vec<String> {
+    let reduce = design.bands.iter().filter(|band| matches!(band.require, Some(Require::ReduceDb(_))));
+    let reduce: Vec<_> = reduce.collect();
+    let alike = |one: &&DesignBand, next: &&DesignBand| one.startup_s.is_some() == next.startup_s.is_some();
+    let rows = names::rows(&reduce, |band| &band.name, alike).into_iter();
+    rows.filter_map(|row| {
+        let name = names::span(&row.first()?.name, &row.last()?.name);
+        Some(match row.iter().filter_map(|band| band.startup_s).map(|s| s.get()).reduce(f64::max) {
+            // Gone within a frame: nothing to tell.
+            Some(s) if s <= 0.0 => return None,
+            Some(s) => format!("{name}: the first {} still carry it", seconds(s)),
+            None => format!("{name}: a steady line at its center never comes down as far as required"),
+        })
+    })
+    .collect()
+}
+
+/// `44100, 48000 and 96000`.
+fn listed(rates: &[u32]) -> String {
+    let rates: Vec<_> = rates.iter().map(u32::to_string).collect();
+    match rates.split_last() {
+        Some((last, [])) => last.clone(),
+        Some((last, others)) => format!("{} and {last}", others.join(", ")),
+        None => String::new(),
+    }
+}
+
+fn closing(outcome: &Outcome, palette: Palette) -> String {
+    let verdict = outcome.summary.verdict;
+    let (word, meaning) = match verdict {
+        Verdict::Met => ("met", "every band with a requirement held in some recording and was missed in none"),
+        Verdict::Missed => ("missed", "a requirement does not hold"),
+        Verdict::Unproven => ("unproven", "a requirement could be shown to hold in no recording, or there is none"),
+    };
+    let mut text = format!("Verdict: {} ({meaning})\n", palette.paint(Style::from(verdict), word));
+    if let Some(path) = &outcome.report_path {
+        text.push_str(&wrapped(&format!("Report: {}", path.display()), 0, 2, WIDTH));
+    }
+    let note = "Levels are relative to full scale, not sound pressure; where a calibrated measurement is required, \
+                this report does not replace it.";
+    text + &wrapped(note, 0, 0, WIDTH)
+}
+
+#[cfg(test)]
+#[path = "summary_text_tests.rs"]
+mod tests;
