@@ -126,16 +126,16 @@ pub fn keep_open(
     let percent = 100.0 * response.resolved;
     if response.resolved < RESOLVED {
         let found = if response.resolved == 0.0 {
-            "nothing of the band stands 10 dB above its floor".to_owned()
+            "nothing of the band stands 10 dB above its floor; it".to_owned()
         } else {
-            format!("only {percent:.0} % of the band stands 10 dB above its floor")
+            format!("only {percent:.0} % of the band stands 10 dB above its floor; the rest")
         };
         return if response.hidden_by_leakage > response.hidden_by_rounding {
-            let advice = "the rest is hidden by leakage from outside the band: except what is loud beside it, or set the band's edges further from it";
-            (Some(ReasonCode::LoudNeighbor), Some(format!("{found}; {advice}")))
+            let advice = "is hidden by leakage from outside the band: except what is loud beside it, or set the band's edges further from it";
+            (Some(ReasonCode::LoudNeighbor), Some(format!("{found} {advice}")))
         } else {
-            let advice = "the rest is hidden by the rounding of the samples: a louder recording or an output encoding of more bits would show more";
-            (Some(ReasonCode::TooQuiet), Some(format!("{found}; {advice}")))
+            let advice = "is hidden by the rounding of the samples: a louder recording or an output encoding of more bits would show more";
+            (Some(ReasonCode::TooQuiet), Some(format!("{found} {advice}")))
         };
     }
     let Some(sub) = decides else { return (Some(ReasonCode::TooQuiet), None) };
