@@ -16,7 +16,7 @@ use std::sync::{Mutex, PoisonError};
 use tempfile::NamedTempFile;
 
 /// Beginning and end of temporary names in OUT.
-const TEMPORARY: (&str, &str) = (".bandproof-", ".part");
+pub(super) const TEMPORARY: (&str, &str) = (".bandproof-", ".part");
 const BUFFER_BYTES: usize = 1 << 18;
 
 /// Everything the threads share.

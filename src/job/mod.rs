@@ -218,7 +218,7 @@ fn not_writable(what: &'static str, path: &Path, cause: io::Error) -> JobError {
 fn temporary_report(report: &Path) -> Result<NamedTempFile, JobError> {
     let folder = report.parent().filter(|folder| !folder.as_os_str().is_empty()).unwrap_or(Path::new("."));
     let mut builder = tempfile::Builder::new();
-    builder.prefix(".bandproof-").suffix(".part");
+    builder.prefix(batch::TEMPORARY.0).suffix(batch::TEMPORARY.1);
     #[cfg(unix)]
     {
         // What any new file gets; tempfile's own default is for its owner only.
