@@ -10,7 +10,7 @@ use std::sync::{Arc, Mutex, PoisonError};
 pub struct Transform {
     window: Vec<f64>,
     fft: Arc<dyn Fft<f64>>,
-    /// Memory that is free: fresh pages cost a tenth of a run.
+    /// Memory that is free, kept for the next recording: fresh pages cost time.
     spare_work: Mutex<Vec<Work>>,
     spare_packed: Mutex<Vec<Vec<Complex64>>>,
 }
