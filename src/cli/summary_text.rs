@@ -241,7 +241,9 @@ fn needed(code: Option<ReasonCode>, shortest_s: Option<f64>) -> String {
     };
     match code {
         Some(ReasonCode::NothingThere) => {
-            "recordings that hold something in this band; a limit on what remains (residual_dbfs) needs none".to_owned()
+            "recordings with something in this band that stands out from its floor; a limit on what remains \
+             (residual_dbfs) needs none"
+                .to_owned()
         }
         Some(ReasonCode::TooShort | ReasonCode::Unsettled) => length(),
         Some(ReasonCode::TooQuiet) => {

@@ -67,12 +67,17 @@ pub fn too_few_bins(band: &BandTask, seconds: f64, count: usize) -> String {
 
 /// Nothing to reduce.
 pub fn nothing_there(shown: &Shown, before_floor: &Floor) -> String {
-    format!(
+    let found = format!(
         "before filtering the band holds {}, its floor is {} ({}): nothing there to remove that stands {STANDS_DB} dB above it",
         level(shown.before_dbfs),
         level(shown.before_floor_dbfs),
         origin(before_floor),
-    )
+    );
+    if before_floor.is_leakage() {
+        format!("{found}; edges further from what is loud beside the band, or a longer recording, lower the floor")
+    } else {
+        found
+    }
 }
 
 /// The floors of a reduce or residual band leave it open. `limiting` is the floor that
