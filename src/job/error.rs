@@ -85,7 +85,7 @@ pub enum JobError {
         cause: io::Error,
     },
     /// The spec does not fit a sample rate of this input.
-    #[error("{cause}; the first recording with that rate is {recording}")]
+    #[error("{cause}; the first recording with that rate is {recording}, and --exclude leaves recordings out")]
     Design {
         /// A recording with that rate.
         recording: String,
