@@ -1,0 +1,8 @@
+//! Files as such: where they really are, which are the same, their hashes, and how a new
+//! one comes about without ever being seen half-written.
+//!
+//! Knows nothing of what is in them.
+
+pub mod digest;
+pub mod place;
+pub mod temporary;
