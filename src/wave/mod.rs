@@ -36,6 +36,7 @@ mod source;
 mod stale;
 mod writer;
 
+use crate::files::digest::hexadecimal as hex;
 pub use error::WaveError;
 pub(crate) use figures::{UlpPower, rounding_power};
 pub use reader::Reader;
@@ -45,11 +46,6 @@ pub use writer::Writer;
 /// Bytes that pass at once: small enough for the inner caches, large enough that
 /// system calls cost nothing.
 pub(crate) const BLOCK_BYTES: usize = 1 << 16;
-
-/// Lower-case hexadecimal.
-fn hex(bytes: &[u8]) -> String {
-    bytes.iter().map(|b| format!("{b:02x}")).collect()
-}
 
 /// How one sample is stored.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]

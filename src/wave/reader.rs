@@ -28,6 +28,8 @@ pub struct Reader<R> {
 #[derive(Debug)]
 struct Pass {
     next_frame: u64,
+    /// Whether samples only pass, neither hashed nor counted.
+    skimming: bool,
     /// Whether the bytes before the samples are in `hasher` yet.
     head_hashed: bool,
     hasher: Sha256,
@@ -44,6 +46,7 @@ impl Pass {
         let channels = usize::from(header.channels);
         Pass {
             next_frame: 0,
+            skimming: false,
             head_hashed: false,
             hasher: Sha256::new(),
             samples_end: None,
@@ -91,7 +94,7 @@ impl<R: Read + Seek> Reader<R> {
                 expected: format!("{}", self.header.channels),
             });
         }
-        if !self.pass.head_hashed {
+        if !self.pass.head_hashed && !self.pass.skimming {
             let hasher = &mut self.pass.hasher;
             self.source.copy(0, self.header.data_offset, "reading the header", |bytes| {
                 hasher.update(bytes);
@@ -116,7 +119,9 @@ impl<R: Read + Seek> Reader<R> {
         let offset = self.header.data_offset + self.pass.next_frame * frame_bytes;
         self.buffer.resize((frames * frame_bytes) as usize, 0);
         self.source.read_at(offset, &mut self.buffer, "reading samples")?;
-        self.pass.hasher.update(&self.buffer);
+        if !self.pass.skimming {
+            self.pass.hasher.update(&self.buffer);
+        }
         let starts: Vec<usize> = planes.iter().map(Vec::len).collect();
         codec::decode(self.header.format.encoding, &self.buffer, planes);
 
@@ -132,6 +137,10 @@ impl<R: Read + Seek> Reader<R> {
                 let offset = self.header.data_offset + frame * frame_bytes + sample;
                 return Err(WaveError::NotFinite { offset, frame, channel: c + 1, value });
             }
+        }
+        if self.pass.skimming {
+            self.pass.next_frame += frames;
+            return Ok(());
         }
         for (block, full_scale) in blocks().zip(&mut self.pass.full_scale) {
             full_scale.add(block);
@@ -151,6 +160,12 @@ impl<R: Read + Seek> Reader<R> {
         Ok(())
     }
 
+    /// Stands before the first sample again for a pass that only looks at samples: nothing is
+    /// hashed or counted, so [`Self::finish`] needs another [`Self::rewind`] first.
+    pub fn skim(&mut self) {
+        self.pass = Pass { skimming: true, ..Pass::new(&self.header) };
+    }
+
     /// Stands before the first sample again, with nothing hashed or counted; the next
     /// read seeks.
     pub fn rewind(&mut self) {
@@ -168,12 +183,9 @@ impl<R: Read + Seek> Reader<R> {
         if let Some(figures) = &self.pass.figures {
             return Ok(figures.clone());
         }
-        if self.pass.next_frame != self.header.frames {
-            return Err(WaveError::FrameCount {
-                verb: "read",
-                found: self.pass.next_frame,
-                expected: self.header.frames,
-            });
+        let read = if self.pass.skimming { 0 } else { self.pass.next_frame };
+        if read != self.header.frames {
+            return Err(WaveError::FrameCount { verb: "read", found: read, expected: self.header.frames });
         }
         let end = self.header.data_offset + self.header.data_bytes;
         let hasher = &mut self.pass.hasher;

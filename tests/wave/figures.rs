@@ -101,6 +101,25 @@ fn rewinding_starts_afresh() {
     assert_eq!(once.full_scale_runs, 2);
 }
 
+#[test]
+fn skimming_gives_the_samples_and_no_figures() {
+    let file = pcm16(2, &[32767; 4000]);
+    let mut reader = Reader::open(Cursor::new(&file)).unwrap();
+    let once = figures(&file, 100);
+    let mut planes = [Vec::new(), Vec::new()];
+    let read_all = |reader: &mut Reader<_>, planes: &mut [Vec<f64>; 2]| {
+        planes.iter_mut().for_each(Vec::clear);
+        while reader.read(300, planes).unwrap() > 0 {}
+    };
+    reader.skim();
+    read_all(&mut reader, &mut planes);
+    assert_eq!(planes, [vec![32767.0 / 32768.0; 2000], vec![32767.0 / 32768.0; 2000]]);
+    assert!(reader.finish().is_err());
+    reader.rewind();
+    read_all(&mut reader, &mut planes);
+    assert_eq!(reader.finish().unwrap(), once);
+}
+
 proptest! {
     #[test]
     fn figures_do_not_depend_on_blocks(
