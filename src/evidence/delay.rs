@@ -1,5 +1,7 @@
 //! The delay and phase that a run of a cross-spectrum agrees with best.
 
+use super::ranges::cross_slice;
+use crate::spectrum::Spectra;
 use num_complex::Complex64;
 use rustfft::FftPlanner;
 use std::f64::consts::TAU;
@@ -15,6 +17,16 @@ pub struct Turned {
     pub sum: f64,
     /// The delay it was turned by, as a share of the segment's length, -1/2 to 1/2.
     pub delay_share: f64,
+}
+
+/// The averaged cross-spectrum of `parts` after the turn that fits it best; `None` where
+/// it was not kept.
+pub fn turned(spectra: &Spectra, parts: &[Range<usize>], planner: &mut FftPlanner<f64>) -> Option<Turned> {
+    let mut stretches = Vec::with_capacity(parts.len());
+    for range in parts {
+        stretches.push((range.start, cross_slice(spectra, range.clone())?));
+    }
+    Some(best_turned(&stretches, planner))
 }
 
 /// Largest `|sum over k of S[k] exp(i t k)|` over all t: the sum after the turn by the

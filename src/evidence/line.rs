@@ -18,8 +18,7 @@ pub struct Peak {
 /// largest bin. `None` where `bins` is empty or holds nothing.
 pub fn largest_peak(spectrum: &[f64], bins: &Range<usize>) -> Option<Peak> {
     let value = |bin: usize| spectrum.get(bin).copied().unwrap_or(0.0);
-    let rises = |bin: usize| bin == 0 || value(bin) >= value(bin - 1);
-    let peaks = |bin: &usize| rises(*bin) && value(*bin) >= value(bin + 1);
+    let peaks = |bin: &usize| is_peak(spectrum, *bin);
     let larger = |a: &usize, b: &usize| value(*a).total_cmp(&value(*b)).then(b.cmp(a));
     let bin = bins.clone().filter(peaks).max_by(larger).or_else(|| bins.clone().max_by(larger))?;
     if value(bin) <= 0.0 {
@@ -29,13 +28,19 @@ pub fn largest_peak(spectrum: &[f64], bins: &Range<usize>) -> Option<Peak> {
     Some(Peak { bin, place: bin as f64 + offset })
 }
 
+/// Whether neither neighbor of `bin` is larger.
+pub fn is_peak(spectrum: &[f64], bin: usize) -> bool {
+    let value = |bin: usize| spectrum.get(bin).copied().unwrap_or(0.0);
+    (bin == 0 || value(bin) >= value(bin - 1)) && value(bin) >= value(bin + 1)
+}
+
 /// Power of the main lobe around `bin`: for a steady line its whole mean square.
 pub fn lobe_power(spectrum: &[f64], bin: usize) -> f64 {
     sum(spectrum, &lobe(bin))
 }
 
 /// The bins in which a line at `bin` shows.
-fn lobe(bin: usize) -> Range<usize> {
+pub fn lobe(bin: usize) -> Range<usize> {
     bin.saturating_sub(MAIN_LOBE_BINS)..bin + MAIN_LOBE_BINS + 1
 }
 

@@ -13,21 +13,36 @@
 //!
 //! Levels are in dB relative to a full-scale sine. With a gain in force the figures
 //! after (level, floor, line, gains) are taken back by it.
+//!
+//! Of a pair that something else filtered ([`Pairing`]) less is known: what the device
+//! adds of its own is a floor, too (`incoherent`), the response is looked at as finely
+//! as the bins allow (`subbands`), and what chance does to so many gains is granted
+//! (`chance`). [`reference_gain`] and [`deviation`] use the same gains (`compare`).
 
+mod chance;
+mod compare;
 mod db;
 mod delay;
 mod figures;
 mod floors;
 mod gains;
+mod incoherent;
+mod keep;
 mod kernel;
 mod line;
+mod pairing;
 mod ranges;
 mod reasons;
+mod response;
 mod subbands;
 mod verdicts;
+mod view;
 
+pub use compare::{Deviation, deviation, reference_gain};
 pub use figures::{judge, judge_all, unsettled};
-pub use ranges::{cross_ranges, cross_slice, shows_gains};
+pub use incoherent::FEWEST_SEGMENTS;
+pub use pairing::{Idle, Pairing};
+pub use ranges::{cross_ranges, cross_slice, pair_ranges, shows_gains};
 
 use crate::spec::Requirement;
 use crate::spectrum::Spectra;
@@ -48,8 +63,11 @@ pub struct Measured<'a> {
     pub rounding_power_before: f64,
     /// Mean square of rounding error and dither after, full scale 1.0, white.
     pub rounding_power_after: f64,
-    /// Linear gain in force (gain_db, scale): figures after are taken back by it.
+    /// Linear gain in force (gain_db, scale, the reference band's): figures after are taken
+    /// back by it.
     pub gain: f64,
+    /// What is known of the pair where something else did the filtering.
+    pub pair: Option<Pairing<'a>>,
 }
 
 /// A band to be judged.
@@ -93,7 +111,11 @@ pub enum ReasonCode {
     LoudNeighbor,
     /// Nothing of the recording remains after the settling time.
     Unsettled,
-    /// The band lies beyond half the sample rate, or wholly in its exceptions.
+    /// What the device adds of its own hides what would have to be seen, or its clock
+    /// wanders too much for gains to be told.
+    DeviceNoise,
+    /// The band lies beyond half the sample rate or what interpolation leaves alone, or
+    /// wholly in its exceptions.
     OutOfRange,
 }
 

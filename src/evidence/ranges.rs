@@ -9,9 +9,17 @@ use std::ops::Range;
 /// Bins for which the cross-spectrum must be kept: the union of the keep and
 /// observed bands, rising and disjoint.
 pub fn cross_ranges(rate_hz: u32, segment_frames: usize, bands: &[BandTask]) -> Vec<Range<usize>> {
+    union_of(rate_hz, segment_frames, bands.iter().filter(|band| shows_gains(&band.requirement)))
+}
+
+/// Bins for which the cross-spectrum of a pair must be kept: the union of all bands,
+/// rising and disjoint. In reduce and residual bands it tells what the device adds.
+pub fn pair_ranges(rate_hz: u32, segment_frames: usize, bands: &[BandTask]) -> Vec<Range<usize>> {
+    union_of(rate_hz, segment_frames, bands.iter())
+}
+
+fn union_of<'a>(rate_hz: u32, segment_frames: usize, bands: impl Iterator<Item = &'a BandTask>) -> Vec<Range<usize>> {
     let mut ranges: Vec<Range<usize>> = bands
-        .iter()
-        .filter(|band| shows_gains(&band.requirement))
         .map(|band| band_bins(rate_hz, segment_frames, band.from_hz, band.to_hz))
         .filter(|range| !range.is_empty())
         .collect();
@@ -54,6 +62,8 @@ pub struct Owned {
     pub pieces: Vec<Range<usize>>,
     /// Bins of the band below [`FIRST_BAND_BIN`], which no figure sees.
     pub hidden: usize,
+    /// Bins of the band that [`Self::below`] left out.
+    pub beyond: usize,
 }
 
 impl Owned {
@@ -82,7 +92,18 @@ impl Owned {
             .map(|bin| bin as f64 / bins_per_hz)
             .filter(|&hz| band.from_hz <= hz && hz < band.to_hz && !excepted(hz))
             .count();
-        Owned { pieces, hidden }
+        Owned { pieces, hidden, beyond: 0 }
+    }
+
+    /// The bins up to `reaches_hz` of them; the rest counts as beyond.
+    pub fn below(mut self, reaches_hz: f64, bin_hz: f64) -> Self {
+        let all = self.bins();
+        // NaN saturates to 0, a huge frequency to the last bin there can be.
+        let end = ((reaches_hz / bin_hz).floor() as usize).saturating_add(1);
+        self.pieces.iter_mut().for_each(|piece| piece.end = piece.end.min(end));
+        self.pieces.retain(|piece| !piece.is_empty());
+        self.beyond += all - self.bins();
+        self
     }
 
     /// Number of bins.
@@ -94,6 +115,12 @@ impl Owned {
     pub fn contains(&self, bin: usize) -> bool {
         let next = self.pieces.partition_point(|piece| piece.end <= bin);
         self.pieces.get(next).is_some_and(|piece| piece.contains(&bin))
+    }
+
+    /// Whether all of `bins` are among them.
+    pub fn spans(&self, bins: &Range<usize>) -> bool {
+        let next = self.pieces.partition_point(|piece| piece.end <= bins.start);
+        self.pieces.get(next).is_some_and(|piece| piece.start <= bins.start && bins.end <= piece.end)
     }
 
     /// The sum of `spectrum` over them.

@@ -19,6 +19,7 @@ fn spec() -> Spec {
     let stop = Row { center_hz: 50.0, width: Width::Hz(3.2), harmonics: 8 };
     let hum = Row { width: Width::Hz(1.0), ..stop };
     Spec {
+        reference_band: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),
@@ -205,6 +206,7 @@ fn a_loud_hum_far_below_hides_no_quiet_ultrasonic_band() {
         sums.add(&x[segment.clone()], &after[segment]);
     }
     let measured = Measured {
+        pair: None,
         rate_hz: FAST,
         seconds: 12.0,
         spectra: &sums.finish(),

@@ -162,6 +162,7 @@ fn an_incoherent_sub_band_has_no_gain_and_no_infinite_error() {
             cross_bins,
         };
         let measured = Measured {
+            pair: None,
             rate_hz: RATE,
             seconds: 1.0,
             spectra: &spectra,
@@ -213,6 +214,7 @@ proptest::proptest! {
                 cross_bins,
             };
             let measured = Measured {
+                pair: None,
                 rate_hz: RATE,
                 seconds: 1.0,
                 spectra: &spectra,

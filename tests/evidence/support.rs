@@ -227,6 +227,7 @@ impl Take {
     pub fn judge_with(&self, spectra: &Spectra, band: &BandTask) -> BandFigures {
         let settled = self.skipped as u64..self.before.len() as u64;
         let measured = Measured {
+            pair: None,
             rate_hz: self.rate_hz,
             seconds: self.before.len() as f64 / f64::from(self.rate_hz),
             spectra,
