@@ -1,5 +1,6 @@
 //! The second-order section: what `design` makes and `cascade` runs.
 
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// One second-order section.
@@ -15,11 +16,12 @@ use serde::{Deserialize, Serialize};
 /// `a[0]` is always 1. The denominator's signs are those of H(z): a source that
 /// prints feedback coefficients to be *added* has `-a[1]`, `-a[2]`. A first-order
 /// section has `b[2] == 0` and `a[2] == 0`.
-#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Section {
     /// Numerator, constant term first, in powers of z^-1.
     pub b: [f64; 3],
-    /// Denominator, constant term first, in powers of z^-1; `a[0]` is 1.
+    /// Denominator, constant term first, in powers of z^-1; the first is 1.
+    #[schemars(extend("prefixItems" = [{"const": 1.0}]))]
     pub a: [f64; 3],
 }

@@ -1,8 +1,9 @@
-//! What only shows between bands: names used twice, exceptions that name nothing, and
-//! bands that ask for the impossible together.
+//! What only shows between bands: names used twice, exceptions and references that name
+//! nothing, and bands that ask for the impossible together.
 
 use std::collections::HashMap;
 
+use super::error::Place;
 use super::problems::Problems;
 use super::read_band::ReadBand;
 use super::suggest;
@@ -21,6 +22,63 @@ pub(super) fn check(bands: &[ReadBand<'_>], problems: &mut Problems) {
             check_keep(bands, index, &excepted, problems);
         }
     }
+}
+
+/// Checks that `reference_band` names one band that shows gains.
+pub(super) fn check_reference(bands: &[ReadBand<'_>], name: &str, place: &Place, problems: &mut Problems) {
+    let shows_gains =
+        |band: &ReadBand<'_>| matches!(band.requirement, Some(Requirement::Keep { .. } | Requirement::Observe));
+    let named = Names::new(bands).resolve(name);
+    let Some((named, band)) = named.and_then(|named| Some((named, bands.get(named.band)?))) else {
+        // It may be the name of a band that has a problem of its own.
+        if bands.iter().all(|band| band.name.is_some()) {
+            let fitting = bands.iter().filter(|band| shows_gains(band));
+            let near = near_name(name, fitting.filter_map(|band| band.name));
+            let row = near.and_then(|near| bands.iter().find(|band| band.name == Some(near))).and_then(lines);
+            let repair = match (near, row) {
+                (Some(near), Some(lines)) => format!("the bands of that row are {}", row_names(near, lines)),
+                (Some(near), None) => format!("did you mean {}?", quote(near)),
+                (None, _) => "name a band that has keep_db or no requirement, or remove it".to_owned(),
+            };
+            let message = format!("reference_band names {}, which is no band of this spec", quote(name));
+            problems.add(place, message, repair);
+        }
+        return;
+    };
+    let limit = match &band.requirement {
+        Some(Requirement::Reduce { .. }) => "reduce_db",
+        Some(Requirement::Residual { .. }) => "residual_dbfs",
+        Some(Requirement::Keep { .. } | Requirement::Observe) => {
+            if let (Some(lines), None) = (lines(band), named.harmonic) {
+                let message = format!("reference_band names a row of {lines} bands, and only one can be the reference");
+                problems.add(place, message, format!("name one of {}", row_names(name, lines)));
+            }
+            return;
+        }
+        None => return,
+    };
+    let message = format!("reference_band names {}, which has {limit} and so shows no gain", quote(name));
+    problems.add(place, message, "name a band that has keep_db or no requirement, or remove it");
+}
+
+/// How many bands a row stands for; nothing for a single band.
+fn lines(band: &ReadBand<'_>) -> Option<u32> {
+    match band.extent {
+        Some(Extent::Row(row)) if row.harmonics > 1 => Some(row.harmonics),
+        _ => None,
+    }
+}
+
+/// `"tones x1" to "tones x8"`.
+fn row_names(row: &str, lines: u32) -> String {
+    format!("{} to {}", quote(&line_name(row, 1)), quote(&line_name(row, lines)))
+}
+
+/// The name most like `written`. `hum x9` of a row of eight lines is near the row,
+/// however it is spelled.
+fn near_name<'k>(written: &str, known: impl Iterator<Item = &'k str> + Clone) -> Option<&'k str> {
+    let row = written.rsplit_once(" x").map(|(row, _)| row);
+    known.clone().find(|known| Some(*known) == row).or_else(|| suggest::name(written, known))
 }
 
 /// What a name stands for: a band of the spec, or one line of it.
@@ -115,11 +173,7 @@ impl<'b, 'n> Names<'b, 'n> {
             };
             all_known = false;
             let reduce = self.bands.iter().filter(|band| matches!(band.requirement, Some(Requirement::Reduce { .. })));
-            // `hum x9` of a row of eight lines is near the row, however it is spelled.
-            let row = name.rsplit_once(" x").map(|(row, _)| row);
-            let mut names = reduce.filter_map(|band| band.name);
-            let near = names.clone().find(|known| Some(*known) == row).or_else(|| suggest::name(name, &mut names));
-            let repair = match near {
+            let repair = match near_name(name, reduce.filter_map(|band| band.name)) {
                 Some(near) => format!("did you mean {}?", quote(near)),
                 None => "name a band that has reduce_db, or remove it".to_owned(),
             };

@@ -96,7 +96,7 @@ impl<'n> Fields<'n> {
                     format!("did you mean {near}?")
                 }
                 None => match suggest::home(&entry.key) {
-                    Some(home) => format!("{} belongs in {home}", entry.key),
+                    Some(home) => format!("{} belongs {home}", entry.key),
                     None => format!("known keys here: {}", fitting.join(", ")),
                 },
             };

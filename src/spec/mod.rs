@@ -3,18 +3,22 @@
 //! A file's bytes become a tree whose nodes know where they stand (`tree`), one
 //! typed reader turns the tree into the normalized types (`read`, over
 //! `fields`), and `contradict` looks at what only shows between entries. TOML
-//! and JSON part ways in the tree alone, so both go through the same checks.
+//! and JSON part ways in the tree alone, so both go through the same checks. `keys` has
+//! the tables as they are written; from it `write` serializes a normalized spec, and
+//! `schema` makes the JSON Schema.
 //!
 //! Every problem of a file is reported at once, each with its place and a repair.
 
 mod contradict;
 mod error;
 mod fields;
+mod keys;
 mod problems;
 mod quantity;
 mod read;
 mod read_band;
 mod read_stage;
+mod schema;
 mod suggest;
 mod tree;
 mod tree_json;
@@ -23,7 +27,10 @@ mod types;
 mod words;
 mod write;
 
+use crate::files::digest::hexadecimal;
 pub use error::{Place, Problem, SpecError};
+pub(crate) use schema::kind_schema;
+pub use schema::schema;
 pub use types::*;
 
 use std::fs::File;
@@ -87,7 +94,7 @@ pub fn load(path: &Path) -> Result<SpecFile, SpecError> {
         Ok(_) => {}
     }
     let spec = parse(&bytes, syntax, &file)?;
-    let file_sha256 = Sha256::digest(&bytes).iter().map(|byte| format!("{byte:02x}")).collect();
+    let file_sha256 = hexadecimal(&Sha256::digest(&bytes));
     Ok(SpecFile { spec, file_sha256 })
 }
 

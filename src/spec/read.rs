@@ -24,15 +24,19 @@ pub(super) const MAX_DB: f64 = 200.0;
 /// grows with their square, and is some ten seconds for this many.
 const MAX_HARMONICS: f64 = 500.0;
 
+/// A Q up to this one reaches from the center down to 0 Hz.
+pub(super) const Q_AT_ZERO_HZ: f64 = 0.5;
+
 /// A frequency that can't be 0.
 pub(super) const FREQUENCY: Quantity = Quantity { noun: "a frequency", unit: "Hz", low: Low::Above(0.0), high: MAX_HZ };
 
-const WIDTH: Quantity = Quantity { noun: "a width", unit: "Hz", low: Low::Above(0.0), high: MAX_HZ };
-const Q: Quantity = Quantity { noun: "a Q (center over width)", unit: "", low: Low::Above(0.0), high: 1e12 };
-const HARMONICS: Quantity = Quantity { noun: "a whole number", unit: "", low: Low::From(1.0), high: MAX_HARMONICS };
-const GAIN: Quantity = Quantity { noun: "a gain", unit: "dB", low: Low::From(-MAX_DB), high: MAX_DB };
+pub(super) const WIDTH: Quantity = Quantity { noun: "a width", unit: "Hz", low: Low::Above(0.0), high: MAX_HZ };
+pub(super) const Q: Quantity = Quantity { noun: "a Q (center over width)", unit: "", low: Low::Above(0.0), high: 1e12 };
+pub(super) const HARMONICS: Quantity =
+    Quantity { noun: "a whole number", unit: "", low: Low::From(1.0), high: MAX_HARMONICS };
+pub(super) const GAIN: Quantity = Quantity { noun: "a gain", unit: "dB", low: Low::From(-MAX_DB), high: MAX_DB };
 
-const TOP_KEYS: &[&str] = &["title", "beyond_half_rate", "output", "stage", "band"];
+pub(super) const TOP_KEYS: &[&str] = &["title", "beyond_half_rate", "reference_band", "output", "stage", "band"];
 pub(super) const OUTPUT_KEYS: &[&str] = &["encoding", "dither", "overload", "gain_db"];
 
 /// Reads a whole spec.
@@ -53,6 +57,7 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     fields.only(TOP_KEYS, TOP_KEYS, problems);
     let title = title(&fields, problems);
     let beyond_half_rate = fields.word("beyond_half_rate", problems).or(BeyondHalfRate::default());
+    let reference = fields.text("reference_band", problems);
     let output = match fields.entry("output") {
         Some(entry) => output(&entry.node, problems),
         None => Some(OutputSpec::default()),
@@ -70,10 +75,14 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     let stages: Vec<_> = stage_nodes.unwrap_or_default().iter().map(|node| read_stage::stage(node, problems)).collect();
     let bands: Vec<_> = band_nodes.unwrap_or_default().iter().map(|node| read_band::band(node, problems)).collect();
     contradict::check(&bands, problems);
+    if let Got::Is(name) = reference {
+        contradict::check_reference(&bands, name, fields.value_place("reference_band"), problems);
+    }
     Some(Spec {
         title: title?,
         beyond_half_rate: beyond_half_rate?,
         output: output?,
+        reference_band: reference.value().map(str::to_owned),
         stages: stages.into_iter().collect::<Option<_>>()?,
         bands: bands.into_iter().map(read_band::ReadBand::finish).collect::<Option<_>>()?,
     })
@@ -170,7 +179,7 @@ fn holds(row: &Row, fields: &Fields<'_>, width_key: &str, problems: &mut Problem
             Width::Hz(hz) => {
                 (hz, format!("give a {width_key} below {}, twice the center", show_number(2.0 * center_hz)))
             }
-            Width::Q(q) => (q, "give a q above 0.5".to_owned()),
+            Width::Q(q) => (q, format!("give a q above {Q_AT_ZERO_HZ}")),
         };
         let message = format!(
             "{key} = {} around {} Hz begins at {} Hz, which is not above 0 Hz",

@@ -8,13 +8,13 @@ use super::read::{FREQUENCY, MAX_DB, row};
 use super::tree::{Node, quote, show_number};
 use super::types::{Band, Extent, Requirement};
 
-const REDUCE: Quantity = Quantity { noun: "an attenuation", unit: "dB", low: Low::Above(0.0), high: MAX_DB };
-const KEEP: Quantity = Quantity { noun: "a tolerance", unit: "dB", low: Low::Above(0.0), high: MAX_DB };
-const RESIDUAL: Quantity =
+pub(super) const REDUCE: Quantity = Quantity { noun: "an attenuation", unit: "dB", low: Low::Above(0.0), high: MAX_DB };
+pub(super) const KEEP: Quantity = Quantity { noun: "a tolerance", unit: "dB", low: Low::Above(0.0), high: MAX_DB };
+pub(super) const RESIDUAL: Quantity =
     Quantity { noun: "a level relative to full scale", unit: "dBFS", low: Low::From(-MAX_DB), high: 0.0 };
 
 /// A lower edge: 0 Hz is one, though the lowest bins never belong to a band.
-const FROM: Quantity = Quantity { low: Low::From(0.0), ..FREQUENCY };
+pub(super) const FROM: Quantity = Quantity { low: Low::From(0.0), ..FREQUENCY };
 
 pub(super) const KEYS: &[&str] = &[
     "name",
@@ -29,7 +29,7 @@ pub(super) const KEYS: &[&str] = &[
     "residual_dbfs",
     "except",
 ];
-const REQUIREMENTS: [&str; 3] = ["reduce_db", "keep_db", "residual_dbfs"];
+pub(super) const REQUIREMENTS: [&str; 3] = ["reduce_db", "keep_db", "residual_dbfs"];
 
 /// A band with its places; `None` where a problem has been noted.
 pub(super) struct ReadBand<'n> {

@@ -10,11 +10,12 @@ use super::words::Word;
 
 /// Pass band ripple. The handbook tables end at 3 dB; 12 dB is four times as much, and
 /// nobody means more.
-const RIPPLE: Quantity = Quantity { noun: "a ripple", unit: "dB", low: Low::Above(0.0), high: 12.0 };
+pub(super) const RIPPLE: Quantity = Quantity { noun: "a ripple", unit: "dB", low: Low::Above(0.0), high: 12.0 };
 
 /// Stop band attenuation. At 10 log10(2) dB (half power, here rounded up) and less, the
 /// edge of the stop band would lie inside what counts as the pass band.
-const STOP: Quantity = Quantity { noun: "a stop band attenuation", unit: "dB", low: Low::Above(3.0103), high: MAX_DB };
+pub(super) const STOP: Quantity =
+    Quantity { noun: "a stop band attenuation", unit: "dB", low: Low::Above(3.0103), high: MAX_DB };
 
 pub(super) const KEYS: &[&str] = &[
     "kind",
@@ -29,14 +30,14 @@ pub(super) const KEYS: &[&str] = &[
     "ripple_db",
     "stop_db",
 ];
-const EDGE_KEYS: &[&str] = &["kind", "family", "order", "edge_hz", "ripple_db", "stop_db"];
-const BAND_KEYS: &[&str] =
+pub(super) const EDGE_KEYS: &[&str] = &["kind", "family", "order", "edge_hz", "ripple_db", "stop_db"];
+pub(super) const BAND_KEYS: &[&str] =
     &["kind", "family", "order", "edges_hz", "center_hz", "width_hz", "q", "harmonics", "ripple_db", "stop_db"];
-const NOTCH_KEYS: &[&str] = &["kind", "center_hz", "width_hz", "q", "harmonics"];
+pub(super) const NOTCH_KEYS: &[&str] = &["kind", "center_hz", "width_hz", "q", "harmonics"];
 
 /// `kind`: the designed filters, and the notch.
 #[derive(Clone, Copy)]
-enum Kind {
+pub(super) enum Kind {
     Filter(FilterKind),
     Notch,
 }
@@ -133,7 +134,7 @@ fn filter(fields: &Fields<'_>, kind: FilterKind, problems: &mut Problems) -> Opt
 }
 
 /// From 1 on; without a family as far as any goes.
-fn order_range(family: Option<Family>) -> Quantity {
+pub(super) fn order_range(family: Option<Family>) -> Quantity {
     let noun = if family == Some(Family::Elliptic) { "an order for elliptic" } else { "an order" };
     let high = family.unwrap_or(Family::Butterworth).highest_order();
     Quantity { noun, unit: "", low: Low::From(1.0), high: f64::from(high) }
@@ -148,8 +149,6 @@ fn ripples(fields: &Fields<'_>, family: Option<Family>, problems: &mut Problems)
         fields.number("stop_db", &STOP, problems);
         return None;
     };
-    let takes_ripple = matches!(family, Family::Chebyshev1 | Family::Elliptic);
-    let takes_stop = matches!(family, Family::Chebyshev2 | Family::Elliptic);
     let mut one = |key: &'static str, takes: bool, quantity: &Quantity, what: &str, takers: &str| {
         if !takes {
             if fields.has(key) {
@@ -165,8 +164,8 @@ fn ripples(fields: &Fields<'_>, family: Option<Family>, problems: &mut Problems)
         }
         got.value().map(Some)
     };
-    let ripple_db = one("ripple_db", takes_ripple, &RIPPLE, "pass band ripple", "chebyshev1 or elliptic");
-    let stop_db = one("stop_db", takes_stop, &STOP, "stop band attenuation", "chebyshev2 or elliptic");
+    let ripple_db = one("ripple_db", family.takes_ripple(), &RIPPLE, "pass band ripple", "chebyshev1 or elliptic");
+    let stop_db = one("stop_db", family.takes_stop(), &STOP, "stop band attenuation", "chebyshev2 or elliptic");
     let (ripple_db, stop_db) = (ripple_db?, stop_db?);
     if let (Some(ripple), Some(stop)) = (ripple_db, stop_db)
         && stop <= ripple

@@ -1,6 +1,6 @@
 //! What an unknown key, word or name was probably meant to be.
 
-use super::read::OUTPUT_KEYS;
+use super::read::{OUTPUT_KEYS, TOP_KEYS};
 use super::read_band::KEYS as BAND_KEYS;
 use super::read_stage::KEYS as STAGE_KEYS;
 use super::words::Word;
@@ -41,6 +41,10 @@ const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
     (&["stages", "filters", "section", "sections"], &["stage"]),
     (&["bands", "requirement", "requirements", "limits"], &["band"]),
     (&["out", "outputs", "write"], &["output"]),
+    (
+        &["reference", "ref", "refband", "referencerange", "zeroband", "normalizeband", "calibrationband", "levelband"],
+        &["reference_band"],
+    ),
     (&["beyondnyquist", "nyquist", "abovehalfrate", "halfrate", "outofrange"], &["beyond_half_rate"]),
 ];
 
@@ -116,10 +120,15 @@ pub(super) fn key(written: &str, fitting: &[&'static str]) -> Option<&'static st
         .copied()
 }
 
-/// The table that a key belongs to which is unknown where it was written. `name` is left
+/// Where a key belongs which is unknown where it was written. `name` is left
 /// out: what has no name elsewhere is rarely meant to be a band.
 pub(super) fn home(written: &str) -> Option<&'static str> {
-    let homes = [("output", OUTPUT_KEYS), ("a stage", STAGE_KEYS), ("a band", BAND_KEYS)];
+    let homes = [
+        ("in output", OUTPUT_KEYS),
+        ("in a stage", STAGE_KEYS),
+        ("in a band", BAND_KEYS),
+        ("at the top of the spec, outside every table", TOP_KEYS),
+    ];
     let owners = homes.iter().filter(|(_, keys)| written != "name" && keys.contains(&written));
     owners.map(|(home, _)| *home).next()
 }

@@ -9,6 +9,9 @@ pub struct Spec {
     pub beyond_half_rate: BeyondHalfRate,
     /// How filtered samples are written.
     pub output: OutputSpec,
+    /// Name of one keep or observed band, `name xN` for a line of a row: its gain counts
+    /// as 0 dB where pairs are measured that something else filtered.
+    pub reference_band: Option<String>,
     /// The filters, applied in this order.
     pub stages: Vec<Stage>,
     /// Named frequency ranges with their requirements. No two share a name, and none has
@@ -46,15 +49,21 @@ pub enum BeyondHalfRate {
 }
 
 /// `[output]`: how filtered samples are written.
-#[derive(Clone, Copy, Debug, Default, PartialEq, serde::Serialize)]
+#[derive(Clone, Copy, Debug, Default, PartialEq, serde::Serialize, schemars::JsonSchema)]
+#[serde(default)]
+#[schemars(rename = "Output", deny_unknown_fields)]
 pub struct OutputSpec {
-    /// Sample encoding of the outputs.
+    /// Sample encoding of the outputs: `same` is the recording's own.
     pub encoding: OutputEncoding,
-    /// Dither before rounding to integers.
+    /// Dither before rounding to integers: `triangular`, 2 steps peak to peak, or `none`,
+    /// plain rounding. Float output has none.
     pub dither: Dither,
-    /// What happens when filtered samples exceed full scale (integer output only).
+    /// What becomes of filtered samples beyond full scale, in integer output only:
+    /// `refuse` fails the recording and names its peak and the repair, `clip` saturates and
+    /// counts the samples, `scale` filters the recording again with the gain that fits.
     pub overload: Overload,
     /// One fixed gain for the whole dataset, dB, from -200 to 200.
+    #[schemars(schema_with = "super::schema::gain")]
     pub gain_db: f64,
 }
 
@@ -162,6 +171,16 @@ impl Family {
     pub fn highest_order(self) -> u32 {
         if self == Self::Elliptic { 14 } else { 20 }
     }
+
+    /// Whether its pass band has a ripple to choose, `ripple_db`.
+    pub fn takes_ripple(self) -> bool {
+        matches!(self, Self::Chebyshev1 | Self::Elliptic)
+    }
+
+    /// Whether its stop band has an attenuation to choose, `stop_db`.
+    pub fn takes_stop(self) -> bool {
+        matches!(self, Self::Chebyshev2 | Self::Elliptic)
+    }
 }
 
 /// Where a [`FilterStage`]'s edges are.
@@ -244,7 +263,7 @@ impl NotchStage {
     pub const KIND_NAME: &str = "notch";
 }
 
-/// A named frequency range with a requirement, or a row of them.
+/// A range of frequencies under a name, with a requirement or without, or a row of them.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Band {
     /// Unique name of one line, not blank.
@@ -272,7 +291,7 @@ pub enum Extent {
 /// What must hold in a band, for the net response of the whole run.
 #[derive(Clone, Debug, PartialEq)]
 pub enum Requirement {
-    /// The level must come down by at least this much.
+    /// The level must fall by this much or more.
     Reduce {
         /// dB, above 0 and at most 200.
         reduce_db: f64,
@@ -285,7 +304,7 @@ pub enum Requirement {
         /// name stands for all its lines, `name xN` for one of them.
         except: Vec<String>,
     },
-    /// What remains must be at or below this level.
+    /// What is left may have this level at most.
     Residual {
         /// dB relative to a full-scale sine, from -200 to 0.
         residual_dbfs: f64,

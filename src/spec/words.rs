@@ -1,7 +1,10 @@
 //! The words that stand for choices in a spec file.
 
+use schemars::{JsonSchema, Schema, SchemaGenerator};
 use serde::{Serialize, Serializer};
+use std::borrow::Cow;
 
+use super::schema;
 use super::types::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload};
 
 /// A choice among words.
@@ -34,6 +37,20 @@ macro_rules! words {
 
             fn word(self) -> &'static str {
                 self.name()
+            }
+        }
+
+        impl JsonSchema for $type {
+            fn inline_schema() -> bool {
+                true
+            }
+
+            fn schema_name() -> Cow<'static, str> {
+                stringify!($type).into()
+            }
+
+            fn json_schema(_: &mut SchemaGenerator) -> Schema {
+                schema::choice::<Self>()
             }
         }
 

@@ -2,70 +2,8 @@
 
 use serde::{Serialize, Serializer};
 
-use super::types::{Band, BeyondHalfRate, Extent, Family, OutputSpec, Placement, Requirement, Row, Spec, Stage, Width};
-
-/// Top level of the file. Keys without a value are left out: there is no word for none.
-#[derive(Serialize)]
-struct Top<'s> {
-    #[serde(skip_serializing_if = "Option::is_none")]
-    title: Option<&'s str>,
-    beyond_half_rate: BeyondHalfRate,
-    output: &'s OutputSpec,
-    stage: &'s [Stage],
-    band: &'s [Band],
-}
-
-/// A `[[stage]]`.
-#[derive(Default, Serialize)]
-struct StageKeys {
-    kind: &'static str,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    family: Option<Family>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    order: Option<u32>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    edge_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    edges_hz: Option<[f64; 2]>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    center_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    width_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    q: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    harmonics: Option<u32>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    ripple_db: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    stop_db: Option<f64>,
-}
-
-/// A `[[band]]`.
-#[derive(Default, Serialize)]
-struct BandKeys<'s> {
-    name: &'s str,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    from_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    to_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    center_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    span_hz: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    q: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    harmonics: Option<u32>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    reduce_db: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    keep_db: Option<f64>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    except: Option<&'s [String]>,
-    #[serde(skip_serializing_if = "Option::is_none")]
-    residual_dbfs: Option<f64>,
-}
+use super::keys::{BandKeys, SpecKeys, StageKeys};
+use super::types::{Band, Extent, Placement, Requirement, Row, Spec, Stage, Width};
 
 /// Width in Hz and Q, one of them.
 fn width_and_q(width: Width) -> (Option<f64>, Option<f64>) {
@@ -85,10 +23,11 @@ impl StageKeys {
 impl Serialize for Spec {
     /// The keys of the spec file, every default filled in.
     fn serialize<S: Serializer>(&self, serializer: S) -> Result<S::Ok, S::Error> {
-        let top = Top {
+        let top = SpecKeys {
             title: self.title.as_deref(),
             beyond_half_rate: self.beyond_half_rate,
-            output: &self.output,
+            reference_band: self.reference_band.as_deref(),
+            output: self.output,
             stage: &self.stages,
             band: &self.bands,
         };

@@ -5,6 +5,7 @@ use bandproof::spec::*;
 /// One entry of every kind.
 pub(crate) const REED_BED_TOML: &str = r#"title = "Reed bed beside the pumping station"
 beyond_half_rate = "leave-out"
+reference_band = "bird calls"
 
 [output]
 encoding = "pcm24"
@@ -84,6 +85,7 @@ q = 50
 pub(crate) const REED_BED_JSON: &str = r#"{
   "title": "Reed bed beside the pumping station",
   "beyond_half_rate": "leave-out",
+  "reference_band": "bird calls",
   "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -1},
   "stage": [
     {"kind": "highpass", "family": "butterworth", "order": 4, "edge_hz": 40},
@@ -110,6 +112,7 @@ fn reed_bed() -> Spec {
     let row = |center_hz, width, harmonics| Row { center_hz, width, harmonics };
     let band = |name: &str, extent, requirement| Band { name: name.to_owned(), extent, requirement };
     Spec {
+        reference_band: Some("bird calls".to_owned()),
         title: Some("Reed bed beside the pumping station".to_owned()),
         beyond_half_rate: BeyondHalfRate::LeaveOut,
         output: OutputSpec {
@@ -172,6 +175,7 @@ fn keys_left_out_get_their_defaults() {
     let spec = crate::read("[[band]]\nname = 'all'\nfrom_hz = 0\nto_hz = 100");
     assert_eq!(spec.title, None);
     assert_eq!(spec.beyond_half_rate, BeyondHalfRate::Error);
+    assert_eq!(spec.reference_band, None);
     assert_eq!(
         spec.output,
         OutputSpec {

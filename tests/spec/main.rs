@@ -9,6 +9,7 @@ mod files;
 mod mutations;
 mod normalized;
 mod places;
+mod reference;
 mod round_trip;
 mod suggestions;
 mod values;

@@ -17,7 +17,7 @@ fn every_default_is_filled_in() {
 fn keys_stand_in_a_fixed_order() {
     let json = serde_json::to_value(crate::read(REED_BED_TOML)).unwrap();
     let keys = |value: &serde_json::Value| value.as_object().unwrap().keys().cloned().collect::<Vec<_>>();
-    assert_eq!(keys(&json), ["title", "beyond_half_rate", "output", "stage", "band"]);
+    assert_eq!(keys(&json), ["title", "beyond_half_rate", "reference_band", "output", "stage", "band"]);
     assert_eq!(
         keys(&json["stage"][1]),
         ["kind", "family", "order", "center_hz", "width_hz", "harmonics", "ripple_db", "stop_db"]

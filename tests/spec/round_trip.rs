@@ -99,6 +99,13 @@ fn bands() -> impl Strategy<Value = Vec<Band>> {
     })
 }
 
+/// One of the bands that can be the reference, if there is any.
+fn reference_band(bands: &[Band], index: proptest::sample::Index) -> Option<String> {
+    let shows_gains = |band: &&Band| matches!(band.requirement, Requirement::Keep { .. } | Requirement::Observe);
+    let names: Vec<_> = bands.iter().filter(shows_gains).flat_map(Band::named).map(|band| band.name).collect();
+    (!names.is_empty()).then(|| index.get(&names).clone())
+}
+
 fn any_spec() -> impl Strategy<Value = Spec> {
     let output = (
         choice(OutputEncoding::ALL),
@@ -109,11 +116,13 @@ fn any_spec() -> impl Strategy<Value = Spec> {
         .prop_map(|(encoding, dither, overload, gain_db)| OutputSpec { encoding, dither, overload, gain_db });
     let title = proptest::option::of("\\PC{0,30}");
     let stages = proptest::collection::vec(stage(), 0..5);
-    (title, choice(BeyondHalfRate::ALL), output, stages, bands())
-        .prop_map(|(title, beyond_half_rate, output, stages, bands)| Spec {
+    let reference = proptest::option::of(any::<proptest::sample::Index>());
+    (title, choice(BeyondHalfRate::ALL), output, stages, bands(), reference)
+        .prop_map(|(title, beyond_half_rate, output, stages, bands, reference)| Spec {
             title,
             beyond_half_rate,
             output,
+            reference_band: reference.and_then(|index| reference_band(&bands, index)),
             stages,
             bands,
         })

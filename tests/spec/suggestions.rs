@@ -100,6 +100,7 @@ fn keys_of_the_output_and_the_top() {
             ("band", &["bands", "requirements"]),
             ("output", &["out", "ouput"]),
             ("beyond_half_rate", &["nyquist", "beyond_nyquist", "beyond-half-rate"]),
+            ("reference_band", &["reference", "ref", "ref_band", "referenceBand", "refrence_band", "reference_hz"]),
         ],
     );
 }
@@ -189,7 +190,7 @@ fn long_texts_are_cut_and_not_compared() {
         said,
         format!(
             "spec.toml:1:1: unknown key \"{}...\" in the spec; \
-             known keys here: title, beyond_half_rate, output, stage, band",
+             known keys here: title, beyond_half_rate, reference_band, output, stage, band",
             "x".repeat(60)
         )
     );
