@@ -12,8 +12,8 @@ pub enum Check {
     Guaranteed,
     /// It depends on where in the band (reduce) or how loud (residual) the energy is.
     Depends,
-    /// A keep band violated outside its exceptions, or a reduce band that no
-    /// frequency in the band reaches.
+    /// It fails whatever a recording holds: a keep band loses too much where nothing is
+    /// excepted, or a reduce band loses enough nowhere.
     Impossible,
 }
 

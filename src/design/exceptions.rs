@@ -3,8 +3,8 @@
 use super::extrema::Profile;
 use crate::spec::NamedBand;
 
-/// The ranges (Hz) in which the response has fallen by more than `keep_db` around the
-/// bands that `except` names, clipped to `from_hz..to_hz`, rising and disjoint.
+/// The ranges (Hz) around the bands named by `except` in which the gain is below
+/// `-keep_db`, clipped to `from_hz..to_hz`, rising and disjoint.
 ///
 /// A named band is taken out whole, even where the response inside it comes up again;
 /// beyond its ends the range goes on as long as the gain stays below `-keep_db`. An

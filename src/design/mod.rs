@@ -2,7 +2,8 @@
 //!
 //! [`placement`] says which lines of which stages and bands fit at a rate,
 //! [`sections`] turns the placed stages into second-order sections, [`response`]
-//! evaluates finished sections exactly, [`settling`] says how long they ring, and
+//! evaluates finished sections exactly, [`settling`] says how long they ring,
+//! [`transition`] how many hertz a stage takes from its pass band to its stop band, and
 //! [`check`] holds the spec's requirements against the exact response.
 
 mod bilinear;
@@ -21,6 +22,7 @@ pub mod roots;
 pub mod sections;
 pub mod settling;
 mod transform;
+pub mod transition;
 mod wording;
 
 use crate::section::Section;
@@ -41,8 +43,8 @@ pub struct Design {
     pub sections: Vec<Section>,
     /// Largest pole radius; 0 for the identity.
     pub max_pole_radius: f64,
-    /// Seconds until the tail of the impulse response has fallen by the largest
-    /// `reduce_db` plus 20 dB (60 dB where there is none).
+    /// Seconds after which the impulse response's tail no longer matters: it is down by
+    /// 20 dB more than the largest `reduce_db` asks for, or by 60 dB without one.
     pub settling_s: f64,
     /// The same in frames, rounded up.
     pub settling_frames: u64,
@@ -141,7 +143,7 @@ const SETTLED_BELOW_REDUCTION_DB: f64 = 20.0;
 /// Designs `spec` for `rate_hz`.
 ///
 /// # Errors
-/// A stage or band that does not fit below half the rate while
+/// A stage or band that reaches beyond half the rate while
 /// `beyond_half_rate = "error"`; poles closer to the unit circle than the margin.
 /// An `impossible` requirement is not an error here: see [`BandDesign::check`] and
 /// [`Design::impossible`].

@@ -52,8 +52,8 @@ pub fn settling_frames(sections: &[Section], fall_db: f64) -> u64 {
     Tail::new(sections).below(limit)
 }
 
-/// Frames until a steady line at `frequency_hz`, present from the first sample, is
-/// down by `reduce_db` for good; `None` if it never is.
+/// Frames until a line at `frequency_hz` that sounds evenly from the start has fallen by
+/// `reduce_db` for good; `None` if it never does.
 ///
 /// Before the first sample the input is taken to have had that sample's value for
 /// ever, as the filter's start state has it. A line of amplitude 1 and any starting

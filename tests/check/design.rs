@@ -31,6 +31,7 @@ fn pumping_station() -> Spec {
     };
     let notch = NotchStage { row: Row { center_hz: 15_800.0, width: Width::Q(60.0), harmonics: 1 } };
     Spec {
+        reference_band: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::LeaveOut,
         output: OUTPUT,
@@ -99,7 +100,14 @@ fn without_a_reduction_the_tail_has_to_fall_by_60_db() {
 #[test]
 fn a_spec_without_stages_is_the_identity() {
     let bands = vec![band("all", 0.0, 4_000.0, keep(0.1, &[])), band("hum", 49.0, 51.0, reduce(20.0))];
-    let spec = Spec { title: None, beyond_half_rate: BeyondHalfRate::Error, output: OUTPUT, stages: Vec::new(), bands };
+    let spec = Spec {
+        reference_band: None,
+        title: None,
+        beyond_half_rate: BeyondHalfRate::Error,
+        output: OUTPUT,
+        stages: Vec::new(),
+        bands,
+    };
     let design = design(&spec, 8_000).unwrap();
     assert!(design.sections.is_empty() && design.stages.is_empty());
     assert_eq!((design.settling_frames, design.settling_s, design.max_pole_radius), (0, 0.0, 0.0));
@@ -124,7 +132,7 @@ fn one_stage(kind: FilterKind, family: Family, order: u32, band: Band) -> Spec {
     let stop_db = matches!(family, Family::Chebyshev2 | Family::Elliptic).then_some(40.0);
     let stage = FilterStage { kind, family, order, placement, ripple_db, stop_db };
     let (stages, bands) = (vec![Stage::Filter(stage)], vec![band]);
-    Spec { title: None, beyond_half_rate: BeyondHalfRate::Error, output: OUTPUT, stages, bands }
+    Spec { reference_band: None, title: None, beyond_half_rate: BeyondHalfRate::Error, output: OUTPUT, stages, bands }
 }
 
 #[test]

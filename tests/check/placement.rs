@@ -15,7 +15,7 @@ fn spec(stages: Vec<Stage>, bands: Vec<Band>, beyond_half_rate: BeyondHalfRate) 
         overload: Overload::Refuse,
         gain_db: 0.0,
     };
-    Spec { title: None, beyond_half_rate, output, stages, bands }
+    Spec { reference_band: None, title: None, beyond_half_rate, output, stages, bands }
 }
 
 fn filter(kind: FilterKind, placement: Placement) -> Stage {
