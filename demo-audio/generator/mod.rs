@@ -1,8 +1,8 @@
-//! The demo scenario, invented: recorders in a reed bed beside a tidal pumping station.
+//! An invented place: a reed bed with recorders, next to a pumping station at a tidal inlet.
 //!
 //! To remove: the pumps' hum at 50 Hz with seven harmonics above it, wind rumble below
-//! 40 Hz, and the 15.8 kHz whine of a power converter. To keep: a booming bird at
-//! 155 to 170 Hz and warblers at 2 to 6 kHz.
+//! 40 Hz, and the 15.8 kHz whine of a power converter. To keep: a bird that booms at
+//! 155 to 170 Hz, and warblers between 2 and 6 kHz.
 //!
 //! | recording | format | what is special |
 //! |---|---|---|

@@ -3,18 +3,19 @@
 use super::{Db, Finite, Hz, NotFinite, Share};
 use crate::evidence::{self, BandFigures, BandTask};
 use crate::spec::Requirement;
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// What must hold in a band: `{"reduce_db": 30.0}`, `{"keep_db": 0.5}` or
 /// `{"residual_dbfs": -90.0}`, as in the spec.
-#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "snake_case")]
 pub enum Require {
-    /// The level must come down by at least this much, dB.
+    /// The level must fall by this much or more, dB.
     ReduceDb(Finite),
     /// The gain must stay within plus or minus this much, dB.
     KeepDb(Finite),
-    /// What remains must be at or below this level, dB relative to a full-scale sine.
+    /// What is left may have this level at most, dB relative to a full-scale sine.
     ResidualDbfs(Finite),
 }
 
@@ -34,7 +35,7 @@ impl Require {
 }
 
 /// Whether a requirement was shown to hold.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Hash, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "lowercase")]
 pub enum Verdict {
     /// Shown to hold.
@@ -56,7 +57,7 @@ impl From<evidence::Verdict> for Verdict {
 }
 
 /// Why a band is unproven.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "kebab-case")]
 pub enum ReasonCode {
     /// The band holds nothing that stands above its floor before filtering.
@@ -69,6 +70,9 @@ pub enum ReasonCode {
     LoudNeighbor,
     /// The filter is still settling when the recording ends.
     Unsettled,
+    /// What the device adds of its own hides what would have to be seen, or its clock
+    /// wanders too much; only in pairs that `measure` was given.
+    DeviceNoise,
     /// The band does not lie in the range that can be measured at this sample rate.
     OutOfRange,
 }
@@ -81,6 +85,7 @@ impl From<evidence::ReasonCode> for ReasonCode {
             evidence::ReasonCode::TooQuiet => ReasonCode::TooQuiet,
             evidence::ReasonCode::LoudNeighbor => ReasonCode::LoudNeighbor,
             evidence::ReasonCode::Unsettled => ReasonCode::Unsettled,
+            evidence::ReasonCode::DeviceNoise => ReasonCode::DeviceNoise,
             evidence::ReasonCode::OutOfRange => ReasonCode::OutOfRange,
         }
     }
@@ -89,53 +94,54 @@ impl From<evidence::ReasonCode> for ReasonCode {
 /// A band in one channel of one recording: figures over the settled part of the
 /// samples as written, and the verdict. A figure below -200 dBFS or without a
 /// meaning in its kind of band is null.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct BandEntry {
     /// Name of the band; `xN` for line N of a row.
     pub name: String,
-    /// Lower edge.
+    /// Lower edge, Hz.
     pub from_hz: Hz,
-    /// Upper edge.
+    /// Upper edge, Hz.
     pub to_hz: Hz,
     /// What must hold; null for a band that is only observed.
     pub require: Option<Require>,
-    /// Level before.
+    /// Level before, dB relative to a full-scale sine.
     pub before_dbfs: Option<Db>,
     /// Level up to which `before_dbfs` may be something else than the band's content.
     pub before_floor_dbfs: Option<Db>,
-    /// Level after; a gain in force is taken back first.
+    /// Level after, likewise; a gain in force is taken back first.
     pub after_dbfs: Option<Db>,
     /// Level up to which `after_dbfs` may be something else than what the filter left.
     pub after_floor_dbfs: Option<Db>,
-    /// `before_dbfs` less `after_dbfs`: positive when the level falls.
+    /// `before_dbfs` less `after_dbfs`, dB: positive when the level falls.
     pub measured_attenuation_db: Option<Db>,
-    /// Largest attenuation that this recording could have shown; null where the
+    /// Largest attenuation that this recording could have shown, dB; null where the
     /// band stands not above its floor before.
     pub demonstrable_attenuation_db: Option<Db>,
-    /// Frequency of the highest peak before; null in keep and observed bands and where the
+    /// Frequency of the highest peak before, Hz; null in keep and observed bands and where the
     /// peak lies below -200 dBFS.
     pub line_hz: Option<Hz>,
     /// Level of that peak before; null likewise.
     pub line_before_dbfs: Option<Db>,
     /// Level at the same place after; null likewise.
     pub line_after_dbfs: Option<Db>,
-    /// Lowest gain seen in the band, negative when the level falls; null in reduce and
+    /// Lowest gain seen in the band, dB, negative when the level falls; null in reduce and
     /// residual bands and where nothing in the band is loud enough.
     pub gain_min_db: Option<Db>,
-    /// Highest gain seen in the band; null likewise.
+    /// Highest gain seen in the band, dB; null likewise.
     pub gain_max_db: Option<Db>,
-    /// One standard error of the gain that decides (the extreme closest to the limit, or
+    /// One standard error, dB, of the gain that decides (the extreme closest to the limit, or
     /// the sub-band that lies outside); null likewise.
+    #[schemars(extend("minimum" = 0))]
     pub gain_error_db: Option<Db>,
     /// Share of the band's width in which a gain could be seen, 0 to 1; null in
     /// reduce and residual bands.
     pub resolved: Option<Share>,
-    /// Narrowest detail that the figures can tell apart; null where no spectrum was taken.
+    /// Narrowest detail that the figures can tell apart, Hz; null where no spectrum was taken.
     pub resolution_hz: Option<Hz>,
-    /// Null where nothing is required.
+    /// Whether the requirement was shown to hold; null where nothing is required.
     pub verdict: Option<Verdict>,
-    /// Null unless `unproven`.
+    /// Why the band is unproven; null unless it is.
     pub reason_code: Option<ReasonCode>,
     /// A sentence on the verdict or on figures that are null; null where none is needed.
     pub reason: Option<String>,

@@ -1,18 +1,19 @@
 //! `designs`: the spec at one sample rate, what it promises, and what the witness saw.
 
-use super::{Db, Finite, Hz, NotFinite, Require, Seconds};
+use super::{Db, Finite, Hz, Methods, NotFinite, Require, Seconds, schema};
 use crate::design::check::CAP_DB;
 use crate::design::sections::{self, StageSize};
 use crate::design::{BandDesign, Check, Design, LeftOut, PlacedStage, Violation};
 use crate::section::Section;
-use crate::spec::Stage;
+use crate::spec::{self, Family, Stage};
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize, Serializer, ser::Error};
 
 /// The spec at one sample rate.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct DesignEntry {
-    /// Sample rate.
+    /// Sample rate, Hz.
     pub rate_hz: u32,
     /// Lines, stages and bands that do not fit below half the rate.
     pub left_out: Vec<LeftOutEntry>,
@@ -22,24 +23,30 @@ pub struct DesignEntry {
     #[serde(serialize_with = "finite_sections")]
     pub sections: Vec<Section>,
     /// How often the cascade runs over the samples.
+    #[schemars(range(min = 1))]
     pub passes: u32,
     /// Seconds until the tail of the impulse response no longer matters: figures of
     /// recordings leave out as much at the start.
+    #[schemars(extend("minimum" = 0))]
     pub settling_s: Seconds,
     /// Largest distance of a pole from zero; 0 for the identity, always below 1.
+    #[schemars(extend("minimum" = 0, "exclusiveMaximum" = 1))]
     pub max_pole_radius: Finite,
     /// Name and version of the dither, or `none`. It speaks of integer output;
     /// float output is never dithered.
+    #[schemars(schema_with = "schema::dither")]
     pub dither: String,
     /// What the exact response promises in each band, in the spec's order.
     pub bands: Vec<DesignBand>,
     /// What an impulse sent through the same code showed; null where none was sent
-    /// (`design`).
+    /// (`design`, `measure`).
     pub witness: Option<WitnessEntry>,
+    /// What a methods section has to state.
+    pub methods: Methods,
 }
 
 /// Something that does not fit below half the sample rate.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct LeftOutEntry {
     /// The line, stage or band.
@@ -49,63 +56,72 @@ pub struct LeftOutEntry {
 }
 
 /// One stage, or one line of a row, at one sample rate.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct StageEntry {
     /// Place of the stage in the spec, 1 for the first.
+    #[schemars(range(min = 1))]
     pub stage: usize,
-    /// Number of the line in its row; null for a stage that is no row.
+    /// Number of the line in its row, 1 for the fundamental; null for a stage that is no row.
+    #[schemars(range(min = 1))]
     pub line: Option<u32>,
-    /// `lowpass`, `highpass`, `bandpass`, `bandstop` or `notch`.
+    /// Kind of the stage as in the spec.
+    #[schemars(schema_with = "spec::kind_schema")]
     pub kind: String,
-    /// `butterworth`, `chebyshev1`, `chebyshev2`, `elliptic` or `bessel`; null for a
-    /// notch, which is given by its poles and zeros directly.
+    /// Prototype family as in the spec; null for a notch, which is given by its poles and
+    /// zeros directly.
+    #[schemars(with = "Option<Family>")]
     pub family: Option<String>,
     /// Order of the low-pass prototype; null for a notch.
+    #[schemars(range(min = 1))]
     pub order: Option<u32>,
     /// Poles of the finished filter: twice `order` for band-pass and band-stop.
     pub total_order: u32,
     /// Second-order sections it takes.
     pub sections: u32,
-    /// One edge, or the lower and the upper; a notch: its -3 dB points.
+    /// One edge, or the lower and the upper, Hz; a notch: its -3 dB points.
+    #[schemars(length(min = 1, max = 2))]
     pub edges_hz: Vec<Hz>,
-    /// Ripple of the pass band; null for families without.
+    /// Ripple of the pass band, dB; null for families without.
     pub ripple_db: Option<Finite>,
-    /// Attenuation of the stop band; null for families without.
+    /// Attenuation of the stop band, dB; null for families without.
     pub stop_db: Option<Finite>,
 }
 
 /// What the exact response promises in one band. Attenuations stop at 180 dB.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct DesignBand {
     /// Name of the band; `xN` for line N of a row.
     pub name: String,
-    /// Lower edge.
+    /// Lower edge, Hz.
     pub from_hz: Hz,
-    /// Upper edge.
+    /// Upper edge, Hz.
     pub to_hz: Hz,
     /// What must hold; null for a band that is only observed.
     pub require: Option<Require>,
-    /// Least attenuation anywhere in the band outside its exceptions.
+    /// Least attenuation anywhere in the band outside its exceptions, dB, positive where the
+    /// level falls.
     pub attenuation_min_db: Db,
-    /// Largest attenuation anywhere in the band outside its exceptions.
+    /// Largest attenuation anywhere in the band outside its exceptions, dB.
     pub attenuation_max_db: Db,
-    /// Start of the range in which the requirement of a reduce or residual band is
+    /// Start, Hz, of the range in which the requirement of a reduce or residual band is
     /// reached, which may begin below the band; null for other bands and where no
     /// frequency reaches it.
     pub reaches_from_hz: Option<Hz>,
-    /// End of that range.
+    /// End of that range, Hz; null likewise.
     pub reaches_to_hz: Option<Hz>,
-    /// Width of what is taken out of a keep band by its exceptions; 0 for other bands.
+    /// Width of what is taken out of a keep band by its exceptions, Hz; 0 for other bands.
     pub excepted_hz: Hz,
-    /// Group delay at the center; null for reduce and residual bands.
+    /// Group delay at the center, seconds; null for reduce and residual bands.
     pub group_delay_s: Option<Seconds>,
     /// Seconds until a steady line at the center is down by `reduce_db`; null for
     /// other bands and for a line that never is.
+    #[schemars(extend("minimum" = 0))]
     pub startup_s: Option<Seconds>,
-    /// Length of the shortest recording in which the band can be judged; null
+    /// Length of the shortest recording in which the band can be judged, seconds; null
     /// without a requirement.
+    #[schemars(extend("minimum" = 0))]
     pub shortest_s: Option<Seconds>,
     /// Whether the design holds the requirement; null without one.
     pub check: Option<CheckResult>,
@@ -114,7 +130,7 @@ pub struct DesignBand {
 }
 
 /// Whether the design can hold a requirement.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "lowercase")]
 pub enum CheckResult {
     /// It holds everywhere in the band.
@@ -127,17 +143,17 @@ pub enum CheckResult {
 }
 
 /// The worst point of an impossible requirement.
-#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct ViolationEntry {
-    /// Where.
+    /// Where, Hz.
     pub at_hz: Hz,
-    /// Gain there, negative where the level falls.
+    /// Gain there, dB, negative where the level falls.
     pub gain_db: Db,
 }
 
 /// What an impulse showed that was filtered by the very code that filters recordings.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct WitnessEntry {
     /// Whether it agrees with the sections' exact response.
@@ -146,16 +162,16 @@ pub struct WitnessEntry {
     pub bands: Vec<WitnessBand>,
 }
 
-/// The response of one band as the witness saw it, to be compared with [`DesignBand`].
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+/// The response of one band as the witness saw it, to be compared with that of the design.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct WitnessBand {
     /// Name of the band.
     pub name: String,
-    /// Least attenuation in the band outside its exceptions; null where the
+    /// Least attenuation in the band outside its exceptions, dB; null where the
     /// witness has no figure for the band.
     pub attenuation_min_db: Option<Db>,
-    /// Largest attenuation in the band outside its exceptions; null likewise.
+    /// Largest attenuation in the band outside its exceptions, dB; null likewise.
     pub attenuation_max_db: Option<Db>,
 }
 
@@ -165,6 +181,20 @@ impl DesignEntry {
     /// # Errors
     /// A figure of the design is NaN or infinite.
     pub fn new(design: &Design, dither: &str, witness: Option<WitnessEntry>) -> Result<Self, NotFinite> {
+        let methods = Methods::new(design, Some(dither))?;
+        DesignEntry::with(design, methods, witness)
+    }
+
+    /// The entry for a `design` that this program does not filter with, as in `measure`: no
+    /// dither, no witness, and `methods` that say so.
+    ///
+    /// # Errors
+    /// As [`DesignEntry::new`].
+    pub fn not_applied(design: &Design) -> Result<Self, NotFinite> {
+        DesignEntry::with(design, Methods::new(design, None)?, None)
+    }
+
+    fn with(design: &Design, methods: Methods, witness: Option<WitnessEntry>) -> Result<Self, NotFinite> {
         Ok(DesignEntry {
             rate_hz: design.rate_hz,
             left_out: design.left_out.iter().map(LeftOutEntry::from).collect(),
@@ -173,9 +203,10 @@ impl DesignEntry {
             passes: 1,
             settling_s: design.settling_s.try_into()?,
             max_pole_radius: design.max_pole_radius.try_into()?,
-            dither: dither.to_owned(),
+            dither: methods.dither.clone(),
             bands: design.bands.iter().map(DesignBand::new).collect::<Result<_, _>>()?,
             witness,
+            methods,
         })
     }
 }

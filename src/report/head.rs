@@ -1,7 +1,8 @@
 //! The top of a report: what it is, the run, the spec.
 
-use super::{DesignEntry, Finite, Seconds};
-use crate::spec::SpecFile;
+use super::{DesignEntry, Finite, Seconds, schema};
+use crate::spec::{Spec, SpecFile};
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// Value of `report`.
@@ -14,16 +15,19 @@ pub const FORMAT: u32 = 1;
 pub const LEVEL_REFERENCE: &str = "0 dBFS is the level of a full-scale sine; not sound pressure";
 
 /// Everything of a report that stands before `recordings`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Head {
-    /// [`REPORT_NAME`].
+    /// What kind of file this is.
+    #[schemars(extend("const" = REPORT_NAME))]
     pub report: String,
-    /// [`FORMAT`].
+    /// Version of this format: rises when a key changes its meaning or goes away.
+    #[schemars(extend("const" = FORMAT))]
     pub format: u32,
     /// Version of the program that wrote the report.
     pub tool_version: String,
-    /// [`LEVEL_REFERENCE`]: what every dBFS figure below refers to.
+    /// What every dBFS figure refers to.
+    #[schemars(extend("const" = LEVEL_REFERENCE))]
     pub level_reference: String,
     /// Facts of this one run.
     pub run: Run,
@@ -53,29 +57,35 @@ impl Head {
 
 /// Times, counts and other facts that differ between two runs of the same job.
 /// Nothing else in a report does.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Run {
-    /// RFC 3339, UTC, whole seconds.
+    /// When the run started: RFC 3339, UTC, whole seconds.
+    #[schemars(schema_with = "schema::instant")]
     pub started: String,
-    /// Wall time of the run.
+    /// Wall time of the run, seconds.
+    #[schemars(extend("minimum" = 0))]
     pub seconds: Seconds,
     /// Threads.
+    #[schemars(range(min = 1))]
     pub jobs: usize,
     /// Largest complex deviation of any witness from its design, relative to full
     /// scale; null where no witness ran.
+    #[schemars(extend("minimum" = 0))]
     pub witness_deviation: Option<Finite>,
 }
 
 /// The spec of a run.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct SpecEntry {
     /// The spec's own title; null where it has none.
     pub title: Option<String>,
     /// SHA-256 of the spec file's bytes, lower-case hexadecimal.
+    #[schemars(schema_with = "schema::sha256")]
     pub file_sha256: String,
     /// The spec with every default filled in, itself a valid spec.
+    #[schemars(with = "Spec")]
     pub normalized: serde_json::Value,
 }
 

@@ -1,7 +1,8 @@
 //! What a person wants to read of a run without opening its report: every band
 //! missed and every recording failed by name, and what proof is lacking.
 
-use super::{BandEntry, Db, ReasonCode, Recording, Require, Seconds, Verdict};
+use super::{BandEntry, Db, Finite, Hz, Pair, ReasonCode, Recording, Require, Seconds, Verdict};
+use crate::align::AMBIGUOUS_DELAY;
 use std::collections::BTreeMap;
 
 /// What went wrong, by name. The lists don't depend on the order in which
@@ -14,6 +15,78 @@ pub struct Highlights {
     pub failed: Vec<FailedItem>,
     /// What could not be proven, by band in the spec's order and by reason.
     pub unproven: Vec<UnprovenItem>,
+    /// How pairs lie; `None` where there are none.
+    pub pairs: Option<PairsItem>,
+}
+
+/// How the pairs of a run lie, and how far they are from the design.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct PairsItem {
+    /// Pairs measured.
+    pub measured: u64,
+    /// Smallest and largest delay, frames.
+    pub delay_frames: Option<(f64, f64)>,
+    /// Pairs where another delay fits as well.
+    pub ambiguous: u64,
+    /// Smallest and largest difference of clocks, parts in a million.
+    pub clock_ppm: Option<(f64, f64)>,
+    /// Smallest and largest gain in the reference band, dB; `None` without one.
+    pub reference_gain_db: Option<(f64, f64)>,
+    /// Pairs whose sign is turned.
+    pub inverted: u64,
+    /// Pairs whose recording after holds runs of samples at full scale.
+    pub at_full_scale: u64,
+    /// The first of them by path.
+    pub first_at_full_scale: Option<String>,
+    /// The pair whose gains are farthest from the design.
+    pub farthest: Option<FarthestItem>,
+}
+
+/// The gain of a run's pairs that is farthest from the design.
+#[derive(Clone, Debug, PartialEq)]
+pub struct FarthestItem {
+    /// The pair's path as reported.
+    pub path: String,
+    /// Gain seen less gain of the design.
+    pub deviation_db: Db,
+    /// One standard error of the gain seen.
+    pub error_db: Db,
+    /// Where.
+    pub at_hz: Hz,
+}
+
+impl PairsItem {
+    fn add(&mut self, path: &str, pair: &Pair, notes: &[String]) {
+        let widened = |range: Option<(f64, f64)>, figure: Option<f64>| match (range, figure) {
+            (Some((least, most)), Some(figure)) => Some((least.min(figure), most.max(figure))),
+            (None, Some(figure)) => Some((figure, figure)),
+            (range, None) => range,
+        };
+        self.measured += 1;
+        self.delay_frames = widened(self.delay_frames, pair.delay_frames.map(Finite::get));
+        self.clock_ppm = widened(self.clock_ppm, pair.clock_ppm.map(Finite::get));
+        for gain in pair.reference_gain_db.iter().flatten() {
+            self.reference_gain_db = widened(self.reference_gain_db, Some(gain.get()));
+        }
+        self.ambiguous += u64::from(notes.iter().any(|note| note.starts_with(AMBIGUOUS_DELAY)));
+        self.inverted += u64::from(pair.inverted == Some(true));
+        if pair.full_scale_runs.is_some_and(|runs| runs > 0) {
+            self.at_full_scale += 1;
+            if self.first_at_full_scale.as_deref().is_none_or(|first| path < first) {
+                self.first_at_full_scale = Some(path.to_owned());
+            }
+        }
+        if let (Some(deviation_db), Some(error_db), Some(at_hz)) =
+            (pair.design_deviation_db, pair.design_deviation_error_db, pair.design_deviation_at_hz)
+        {
+            let one = FarthestItem { path: path.to_owned(), deviation_db, error_db, at_hz };
+            let farther = |one: &FarthestItem, other: &FarthestItem| {
+                let beyond = |item: &FarthestItem| item.deviation_db.get().abs() - 2.0 * item.error_db.get();
+                beyond(one).total_cmp(&beyond(other)).then_with(|| other.path.cmp(&one.path))
+            };
+            self.farthest = self.farthest.take().into_iter().chain([one]).max_by(farther);
+        }
+    }
 }
 
 /// A band that one channel of one recording missed.
@@ -67,6 +140,7 @@ pub(super) struct Collector {
     missed: Vec<(usize, MissedItem)>,
     failed: Vec<FailedItem>,
     unproven: BTreeMap<(usize, Option<ReasonCode>), Group>,
+    pairs: Option<PairsItem>,
 }
 
 /// Recordings in which a band was unproven for the same reason.
@@ -85,6 +159,13 @@ impl Collector {
     pub(super) fn failed(&mut self, recording: &Recording) {
         let error = recording.error.clone().unwrap_or_default();
         self.failed.push(FailedItem { path: recording.path.clone(), error });
+    }
+
+    /// Takes how a pair lies that was measured.
+    pub(super) fn pair(&mut self, recording: &Recording) {
+        if let Some(pair) = &recording.pair {
+            self.pairs.get_or_insert_default().add(&recording.path, pair, &recording.notes);
+        }
     }
 
     /// Takes a band of one channel; `place` is its place in the spec.
@@ -153,6 +234,7 @@ impl Collector {
             missed: self.missed.into_iter().map(|(_, item)| item).collect(),
             failed: self.failed,
             unproven: unproven.collect(),
+            pairs: self.pairs,
         }
     }
 }

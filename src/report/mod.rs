@@ -11,9 +11,14 @@ mod design_entry;
 mod head;
 mod highlights;
 mod layout;
+mod methods;
 mod numbers;
+mod pair;
+mod read;
 mod recording;
+mod schema;
 mod summary;
+mod table;
 mod writer;
 
 pub use band_entry::{BandEntry, ReasonCode, Require, Verdict};
@@ -21,9 +26,14 @@ pub use design_entry::{
     CheckResult, DesignBand, DesignEntry, LeftOutEntry, StageEntry, ViolationEntry, WitnessBand, WitnessEntry,
 };
 pub use head::{FORMAT, Head, LEVEL_REFERENCE, REPORT_NAME, Run, SpecEntry};
-pub use highlights::{FailedItem, Highlights, MissedItem, UnprovenItem};
+pub use highlights::{FailedItem, FarthestItem, Highlights, MissedItem, PairsItem, UnprovenItem};
 pub use layout::write_pretty;
+pub use methods::{EdgeDefinition, Methods, MethodsBand, MethodsLine, MethodsStage, MethodsTransition};
 pub use numbers::{Db, Finite, Hz, NotFinite, Seconds, Share};
+pub use pair::{DelaySource, Pair};
+pub use read::{ReadError, read_report};
 pub use recording::{ChannelEntry, ChunkEntry, Input, OutputFile, Recording, SpectrumEntry, Status};
-pub use summary::{BandSummary, Skipped, Summary, SummaryBuilder};
+pub use schema::{Report, schema};
+pub use summary::{BandSummary, Skipped, Summary, SummaryBuilder, Unpaired};
+pub use table::TableWriter;
 pub use writer::write_report;

@@ -5,7 +5,9 @@
 //! as `null` without a word. These types can't hold one: whoever makes a figure
 //! gets `None` from `new` and has to say why there is no figure.
 
+use schemars::{JsonSchema, Schema, SchemaGenerator, json_schema};
 use serde::{Deserialize, Serialize};
+use std::borrow::Cow;
 use std::time::Duration;
 
 /// A number that JSON cannot hold.
@@ -21,8 +23,8 @@ fn rounded(value: f64, per_unit: f64) -> f64 {
 }
 
 macro_rules! number {
-    ($(#[$doc:meta])* $name:ident, $round:expr) => {
-        $(#[$doc])*
+    ($(#[doc = $doc:literal])* $name:ident, $round:expr, $schema:tt) => {
+        $(#[doc = $doc])*
         #[derive(Clone, Copy, Debug, PartialEq, PartialOrd, Serialize, Deserialize)]
         #[serde(try_from = "f64", into = "f64")]
         pub struct $name(f64);
@@ -37,6 +39,18 @@ macro_rules! number {
             /// The number as written in the report.
             pub fn get(self) -> f64 {
                 self.0
+            }
+        }
+
+        impl JsonSchema for $name {
+            fn schema_name() -> Cow<'static, str> {
+                stringify!($name).into()
+            }
+
+            fn json_schema(_: &mut SchemaGenerator) -> Schema {
+                let mut schema = json_schema!($schema);
+                schema.insert("description".to_owned(), concat!($($doc, "\n"),*).trim().into());
+                schema
             }
         }
 
@@ -58,24 +72,24 @@ macro_rules! number {
 
 number! {
     /// A level (dBFS), attenuation or gain (dB), rounded to 0.001.
-    Db, |value| rounded(value, 1e3)
+    Db, |value| rounded(value, 1e3), {"type": "number"}
 }
 number! {
     /// A frequency or the width of a range, Hz, rounded to a millionth: harmonics of
     /// a decimal center come out as people write them (150.3, not 150.29999999999998).
-    Hz, |value| rounded(value, 1e6)
+    Hz, |value| rounded(value, 1e6), {"type": "number", "minimum": 0}
 }
 number! {
     /// A time, seconds, rounded to a microsecond.
-    Seconds, |value| rounded(value, 1e6)
+    Seconds, |value| rounded(value, 1e6), {"type": "number"}
 }
 number! {
     /// A part of a whole, 0 to 1, rounded to a millionth.
-    Share, |value| rounded(value, 1e6)
+    Share, |value| rounded(value, 1e6), {"type": "number", "minimum": 0, "maximum": 1}
 }
 number! {
     /// A number written in full: its shortest decimal form that reads back as the same bits.
-    Finite, |value| value
+    Finite, |value| value, {"type": "number"}
 }
 
 impl Seconds {

@@ -1,14 +1,17 @@
 //! `recordings`: one entry a recording.
 
-use super::{BandEntry, Db, Finite, Hz, Seconds};
+use super::{BandEntry, Db, Finite, Hz, Pair, Seconds, schema};
 use crate::wave::ChunkFate;
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
 /// One recording.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Recording {
-    /// Relative to the input root, `/` between components, percent-escaped where not UTF-8.
+    /// Relative to the input root (in a report of `measure` that of the recordings before), `/`
+    /// between components, percent-escaped where not UTF-8.
+    #[schemars(schema_with = "schema::path")]
     pub path: String,
     /// Whether it was processed.
     pub status: Status,
@@ -18,77 +21,86 @@ pub struct Recording {
     pub notes: Vec<String>,
     /// The input; null where its header could not be read.
     pub input: Option<Input>,
-    /// The output; null for a failed recording.
+    /// The output; null for a failed recording and in a report of `measure`, where nothing
+    /// is written (the recording after stands in `pair`).
     pub output: Option<OutputFile>,
     /// Chunks of the input in order.
     pub chunks: Vec<ChunkEntry>,
     /// How spectra were taken; null where none was.
     pub spectrum: Option<SpectrumEntry>,
-    /// Always null: this program filtered the recording itself.
-    pub pair: Option<()>,
+    /// The recording after in a report of `measure`; null in one of `filter`, and where it
+    /// could not be looked at.
+    pub pair: Option<Pair>,
     /// Figures and verdicts by channel; empty for a failed recording.
     pub channels: Vec<ChannelEntry>,
 }
 
 /// Whether a recording was processed.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "lowercase")]
 pub enum Status {
-    /// Filtered, measured and written.
+    /// Filtered, measured and written; in a report of `measure` measured with its partner.
     Done,
-    /// Not written; the error says why.
+    /// Not written, or not measured; the error says why.
     Failed,
 }
 
-/// The input of a recording.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+/// The input of a recording; in a report of `measure` the recording before.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Input {
     /// SHA-256 of the file, lower-case hexadecimal; null where it was not read to its end.
+    #[schemars(schema_with = "schema::sha256_or_null")]
     pub sha256: Option<String>,
-    /// Length of the file.
+    /// Length of the file, bytes.
     pub bytes: u64,
-    /// Sample rate.
+    /// Sample rate, Hz.
     pub rate_hz: u32,
     /// Channels.
     pub channels: u16,
-    /// `pcm8`, `pcm16`, `pcm24`, `pcm32`, `float32` or `float64`.
+    /// Sample encoding.
+    #[schemars(schema_with = "schema::encoding")]
     pub encoding: String,
     /// Frames.
     pub frames: u64,
-    /// Frames over rate.
+    /// Length in seconds: frames over rate.
+    #[schemars(extend("minimum" = 0))]
     pub seconds: Seconds,
     /// Runs of samples at full scale; null where it was not read to its end.
     pub full_scale_runs: Option<u64>,
 }
 
 /// The output of a recording.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct OutputFile {
-    /// Relative to the output root, written like [`Recording::path`].
+    /// Relative to the output root, written like the recording's `path`.
+    #[schemars(schema_with = "schema::path")]
     pub path: String,
     /// SHA-256 of the file, lower-case hexadecimal.
+    #[schemars(schema_with = "schema::sha256")]
     pub sha256: String,
-    /// Length of the file.
+    /// Length of the file, bytes.
     pub bytes: u64,
-    /// As in [`Input::encoding`].
+    /// Sample encoding.
+    #[schemars(schema_with = "schema::encoding")]
     pub encoding: String,
     /// Largest absolute sample as written, dB relative to full scale (1.0, so a
     /// full-scale sine peaks at 0); null for silence.
     pub peak_dbfs: Option<Db>,
     /// Samples that were saturated.
     pub clipped_samples: u64,
-    /// Gain in force: `output.gain_db`, or what `overload = "scale"` came to. In full,
+    /// Gain in force, dB: `output.gain_db`, or what `overload = "scale"` came to. In full,
     /// not rounded, so that the output can be made again from it.
     pub gain_db: Finite,
 }
 
 /// A chunk of the input.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct ChunkEntry {
     /// Four bytes as characters; `%` and bytes outside printable ASCII as `%XX`.
+    #[schemars(schema_with = "schema::chunk_id")]
     pub id: String,
     /// Bytes of its body.
     pub bytes: u64,
@@ -97,26 +109,30 @@ pub struct ChunkEntry {
 }
 
 /// How a recording's spectra were taken.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct SpectrumEntry {
-    /// `blackman-harris-4`.
+    /// Window function: the 4-term Blackman-Harris window.
+    #[schemars(extend("const" = "blackman-harris-4"))]
     pub window: String,
-    /// Length of a segment.
+    /// Length of a segment, frames.
+    #[schemars(range(min = 1))]
     pub segment_frames: usize,
     /// Segments averaged.
     pub segments: usize,
-    /// Distance of two bins.
+    /// Distance of two bins, Hz.
     pub bin_hz: Hz,
     /// Seconds left out at the start.
+    #[schemars(extend("minimum" = 0))]
     pub skipped_s: Seconds,
 }
 
 /// Figures of one channel.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct ChannelEntry {
-    /// 1 for the first.
+    /// Number of the channel, 1 for the first.
+    #[schemars(range(min = 1))]
     pub channel: u16,
     /// The bands in the spec's order.
     pub bands: Vec<BandEntry>,

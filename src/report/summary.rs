@@ -1,38 +1,53 @@
 //! `summary`: what the recordings came to, band by band.
 
 use super::highlights::Collector;
-use super::{BandEntry, Db, Highlights, NotFinite, Recording, Require, Status, Verdict};
+use super::{BandEntry, Db, Highlights, NotFinite, Recording, Require, Status, Verdict, schema};
 use crate::spec::Spec;
+use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 use std::collections::HashMap;
 
 /// The end of a report.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Summary {
-    /// Recordings in the report.
+    /// Recordings in the report; in one of `measure` a pair is one.
     pub recordings: u64,
-    /// Those that were filtered and measured.
+    /// Those that were filtered and measured; by `measure`: measured.
     pub done: u64,
     /// Those that could not be processed.
     pub failed: u64,
-    /// Files of the input folder that are no recordings.
+    /// Files of the input folder (of both folders of `measure`) that are no recordings.
     pub skipped: Skipped,
+    /// Recordings on one side only; null in a report of `filter`.
+    pub unpaired: Option<Unpaired>,
     /// The spec's bands in the spec's order, also those that fit at no sample rate.
     pub bands: Vec<BandSummary>,
-    /// `missed` if a band was missed anywhere; else `unproven` if a band with a
-    /// requirement was met in no recording or no band has a requirement; else `met`.
+    /// `missed` if a band was missed anywhere; else `met` if every band with a requirement
+    /// was met in some recording, and there is such a band; else `unproven`.
     pub verdict: Verdict,
 }
 
-/// Files of the input folder that are no recordings.
-#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize)]
+/// Files of the input folder (of both folders of `measure`) that are no recordings.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct Skipped {
     /// Names that begin with `._`: companions that some systems write beside each file.
     pub dot_underscore: u64,
     /// Everything else; it is not copied.
     pub other_files: u64,
+}
+
+/// Recordings that `measure` found on one side only, by their paths below its root.
+#[derive(Clone, Debug, Default, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct Unpaired {
+    /// Before only.
+    #[schemars(schema_with = "schema::paths")]
+    pub before: Vec<String>,
+    /// After only.
+    #[schemars(schema_with = "schema::paths")]
+    pub after: Vec<String>,
 }
 
 /// One band over all recordings that are done.
@@ -53,7 +68,7 @@ pub struct Skipped {
 /// | none | the gain farthest from 0, every channel | the one farthest from 0 |
 ///
 /// Channels whose figure is null don't take part.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 #[serde(deny_unknown_fields)]
 pub struct BandSummary {
     /// Name of the band; `xN` for line N of a row.
@@ -64,9 +79,9 @@ pub struct BandSummary {
     pub missed: u64,
     /// Recordings in which neither could be shown.
     pub unproven: u64,
-    /// The worst figure.
+    /// The worst figure, dB.
     pub worst_db: Option<Db>,
-    /// The middle figure; of an even number the mean of the two in the middle.
+    /// The middle figure, dB; of an even number the mean of the two in the middle.
     pub median_db: Option<Db>,
 }
 
@@ -119,6 +134,7 @@ impl SummaryBuilder {
                 return;
             }
         }
+        self.collector.pair(recording);
         let mut verdicts: Vec<Option<Verdict>> = vec![None; self.bands.len()];
         for channel in &recording.channels {
             for band in &channel.bands {
@@ -148,6 +164,7 @@ impl SummaryBuilder {
             done: self.done,
             failed: self.failed,
             skipped,
+            unpaired: None,
             bands: self.bands.into_iter().map(Tally::finish).collect(),
             verdict,
         };

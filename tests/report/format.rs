@@ -26,6 +26,7 @@ mirror! {
     Design {
         rate_hz: u32, left_out: Vec<LeftOut>, stages: Vec<Stage>, sections: Vec<Section>, passes: u32,
         settling_s: f64, max_pole_radius: f64, dither: String, bands: Vec<DesignBand>, witness: Option<Witness>,
+        methods: Methods,
     }
     LeftOut { what: String, reason: String }
     Stage {
@@ -42,9 +43,28 @@ mirror! {
     Violation { at_hz: f64, gain_db: f64 }
     Witness { agrees: bool, bands: Vec<WitnessBand> }
     WitnessBand { name: String, attenuation_min_db: f64, attenuation_max_db: f64 }
+    Methods {
+        sentence: String, program: String, applied: bool, rate_hz: u32, design: Option<String>, total_order: u32,
+        sections: u32, passes: u32, direction: String, causal: bool, phase: String,
+        start_state: Option<String>,
+        settling_s: f64, arithmetic: Option<String>, dither: String, stages: Vec<MethodsStage>, bands: Vec<MethodsBand>,
+    }
+    MethodsStage {
+        stage: u32, kind: String, family: Option<String>, order: Option<u32>, total_order: u32, sections: u32,
+        edge_definition: String, ripple_db: Option<f64>, stop_db: Option<f64>, lines: Vec<MethodsLine>,
+    }
+    MethodsLine { line: Option<u32>, edges_hz: Vec<f64>, transitions: Vec<Transition> }
+    Transition {
+        pass_hz: Option<f64>, pass_db: f64, stop_hz: Option<f64>, stop_db: Option<f64>, width_hz: Option<f64>,
+    }
+    MethodsBand {
+        name: String, from_hz: f64, to_hz: f64, require: Option<BTreeMap<String, f64>>, attenuation_db: Option<f64>,
+        deviation_db: Option<f64>, group_delay_s: Option<f64>,
+    }
     Entry {
         path: String, status: String, error: Option<String>, notes: Vec<String>, input: Option<Input>,
-        output: Option<Output>, chunks: Vec<Chunk>, spectrum: Option<Spectrum>, pair: (), channels: Vec<Channel>,
+        output: Option<Output>, chunks: Vec<Chunk>, spectrum: Option<Spectrum>, pair: Option<Pair>,
+        channels: Vec<Channel>,
     }
     Input {
         sha256: Option<String>, bytes: u64, rate_hz: u32, channels: u16, encoding: String, frames: u64,
@@ -56,6 +76,13 @@ mirror! {
     }
     Chunk { id: String, bytes: u64, kept: bool }
     Spectrum { window: String, segment_frames: u64, segments: u64, bin_hz: f64, skipped_s: f64 }
+    Pair {
+        path: String, sha256: Option<String>, bytes: u64, encoding: String, frames: u64, full_scale_runs: Option<u64>,
+        delay_frames: Option<f64>, delay_source: Option<String>, max_delay_s: Option<f64>, clock_ppm: Option<f64>,
+        clock_error_ppm: Option<f64>, delay_scatter_s: Option<f64>,
+        inverted: Option<bool>, overlap_frames: Option<u64>, noise_sha256: Option<String>, reference_gain_db: Option<Vec<f64>>,
+        design_deviation_db: Option<f64>, design_deviation_error_db: Option<f64>, design_deviation_at_hz: Option<f64>,
+    }
     Channel { channel: u16, bands: Vec<Band> }
     Band {
         name: String, from_hz: f64, to_hz: f64, require: Option<BTreeMap<String, f64>>,
@@ -67,8 +94,10 @@ mirror! {
         reason_code: Option<String>, reason: Option<String>,
     }
     Summary {
-        recordings: u64, done: u64, failed: u64, skipped: Skipped, bands: Vec<BandSummary>, verdict: String,
+        recordings: u64, done: u64, failed: u64, skipped: Skipped, unpaired: Option<Unpaired>,
+        bands: Vec<BandSummary>, verdict: String,
     }
+    Unpaired { before: Vec<String>, after: Vec<String> }
     Skipped { dot_underscore: u64, other_files: u64 }
     BandSummary {
         name: String, met: u64, missed: u64, unproven: u64, worst_db: Option<f64>, median_db: Option<f64>,
@@ -86,6 +115,7 @@ fn recordings() -> Vec<Recording> {
     vec![
         samples::done("station-a/0512.wav", vec![vec![samples::hum(), samples::calls()]]),
         Recording::failed("station-b/0513.wav", "it holds no frames (empty)"),
+        samples::paired("station-c/0514.wav", vec![vec![samples::hum(), samples::calls()]]),
     ]
 }
 
@@ -110,7 +140,15 @@ fn every_key_is_known_and_every_known_key_is_there() {
     let failed = &report.recordings[1];
     assert_eq!((failed.status.as_str(), failed.error.as_deref()), ("failed", Some("it holds no frames (empty)")));
     assert!(failed.output.is_none() && failed.channels.is_empty());
-    assert_eq!((report.summary.done, report.summary.failed), (1, 1));
+    let [_, _, paired] = report.recordings.as_slice() else { panic!("three recordings") };
+    let pair = paired.pair.as_ref().unwrap();
+    assert_eq!((pair.delay_frames, pair.delay_source.as_deref()), (Some(1441.25), Some("found")));
+    assert!(entry.pair.is_none() && paired.output.is_none());
+    assert_eq!((report.summary.done, report.summary.failed), (2, 1));
+    assert!(report.summary.unpaired.is_none());
+    let methods = &design.methods;
+    assert_eq!((methods.applied, methods.stages[0].edge_definition.as_str()), (true, "ripple-ends"));
+    assert_eq!(methods.stages[0].lines[0].transitions[1].width_hz, Some(1.17));
     assert_eq!(report.summary.verdict, "unproven");
 }
 
@@ -123,7 +161,13 @@ fn keys(value: &serde_json::Value) -> Vec<&str> {
 fn keys_stand_in_their_fixed_order() {
     let report: serde_json::Value = serde_json::from_slice(&samples::written(&spec(), &recordings())).unwrap();
     let top = "report format tool_version level_reference run complete spec designs recordings summary";
-    let design = "rate_hz left_out stages sections passes settling_s max_pole_radius dither bands witness";
+    let design = "rate_hz left_out stages sections passes settling_s max_pole_radius dither bands witness methods";
+    let methods = "sentence program applied rate_hz design total_order sections passes direction causal phase \
+                   start_state settling_s arithmetic dither stages bands";
+    let stage = "stage kind family order total_order sections edge_definition ripple_db stop_db lines";
+    let pair = "path sha256 bytes encoding frames full_scale_runs delay_frames delay_source max_delay_s clock_ppm \
+                clock_error_ppm delay_scatter_s inverted overlap_frames noise_sha256 reference_gain_db \
+                design_deviation_db design_deviation_error_db design_deviation_at_hz";
     let design_band = "name from_hz to_hz require attenuation_min_db attenuation_max_db reaches_from_hz \
                        reaches_to_hz excepted_hz group_delay_s startup_s shortest_s check violation";
     let recording = "path status error notes input output chunks spectrum pair channels";
@@ -139,14 +183,26 @@ fn keys_stand_in_their_fixed_order() {
         (&report["spec"], "title file_sha256 normalized"),
         (&report["designs"][0], design),
         (&report["designs"][0]["bands"][0], design_band),
+        (&report["designs"][0]["methods"], methods),
+        (&report["designs"][0]["methods"]["stages"][0], stage),
+        (&report["designs"][0]["methods"]["stages"][0]["lines"][0], "line edges_hz transitions"),
+        (
+            &report["designs"][0]["methods"]["stages"][0]["lines"][0]["transitions"][0],
+            "pass_hz pass_db stop_hz stop_db width_hz",
+        ),
+        (
+            &report["designs"][0]["methods"]["bands"][0],
+            "name from_hz to_hz require attenuation_db deviation_db group_delay_s",
+        ),
         (first, recording),
+        (&report["recordings"][2]["pair"], pair),
         (&report["recordings"][1], recording),
         (&first["input"], input),
         (&first["output"], output),
         (&first["chunks"][0], "id bytes kept"),
         (&first["spectrum"], "window segment_frames segments bin_hz skipped_s"),
         (&first["channels"][0]["bands"][0], band),
-        (&report["summary"], "recordings done failed skipped bands verdict"),
+        (&report["summary"], "recordings done failed skipped unpaired bands verdict"),
         (&report["summary"]["bands"][0], "name met missed unproven worst_db median_db"),
     ] {
         assert_eq!(keys(value), expected.split_whitespace().collect::<Vec<_>>());
@@ -171,6 +227,16 @@ fn a_damaged_recording_is_an_error_that_says_which() {
     let error = write_report(&mut Vec::new(), &samples::head(), lines.into_iter().map(Ok), &summary).unwrap_err();
     assert_eq!(error.kind(), std::io::ErrorKind::InvalidData);
     assert!(error.to_string().contains("entry 2"), "{error}");
+}
+
+#[test]
+fn recordings_without_a_partner_are_named_in_the_summary() {
+    let (summary, _) = bandproof::report::SummaryBuilder::new(&spec()).unwrap().finish(Default::default());
+    let unpaired = bandproof::report::Unpaired { before: vec!["a.wav".to_owned()], after: Vec::new() };
+    let summary = bandproof::report::Summary { unpaired: Some(unpaired), ..summary };
+    let mirror: Summary = serde_json::from_str(&serde_json::to_string(&summary).unwrap()).unwrap();
+    let unpaired = mirror.unpaired.unwrap();
+    assert_eq!((unpaired.before, unpaired.after), (vec!["a.wav".to_owned()], Vec::new()));
 }
 
 #[test]

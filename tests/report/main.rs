@@ -4,5 +4,8 @@
 mod builders;
 mod format;
 mod layout;
+mod methods;
 mod samples;
+mod sentences;
 mod summary;
+mod table;

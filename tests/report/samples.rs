@@ -27,6 +27,7 @@ pub fn reduce(limit: f64) -> Option<Require> {
 /// A spec of single bands.
 pub fn spec(bands: &[(&str, Requirement)]) -> Spec {
     Spec {
+        reference_band: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),
@@ -132,8 +133,90 @@ pub fn done(path: &str, channels: Vec<Vec<BandEntry>>) -> Recording {
     }
 }
 
+/// A recording of `measure`: nothing written, the recording after in its place.
+pub fn paired(path: &str, channels: Vec<Vec<BandEntry>>) -> Recording {
+    Recording {
+        output: None,
+        pair: Some(Pair {
+            path: path.to_owned(),
+            sha256: Some("4c".repeat(32)),
+            bytes: 8_640_044,
+            encoding: "pcm24".to_owned(),
+            frames: 2_880_480,
+            full_scale_runs: Some(2),
+            delay_frames: Finite::new(1441.25),
+            delay_source: Some(DelaySource::Found),
+            max_delay_s: Some(seconds(10.0)),
+            clock_ppm: Finite::new(-3.5),
+            clock_error_ppm: Finite::new(0.02),
+            delay_scatter_s: Some(seconds(0.000_002)),
+            inverted: Some(true),
+            overlap_frames: Some(2_879_039),
+            noise_sha256: Some("9e".repeat(32)),
+            reference_gain_db: Some(vec![Db::new(-6.02).unwrap(), Db::new(0.25).unwrap()]),
+            design_deviation_db: db(-0.034),
+            design_deviation_error_db: db(0.009),
+            design_deviation_at_hz: Some(hz(4310.5)),
+        }),
+        ..done(path, channels)
+    }
+}
+
+fn methods() -> Methods {
+    let transition = |pass_hz: f64, stop_hz: f64, width_hz: f64| MethodsTransition {
+        pass_hz: Some(hz(pass_hz)),
+        pass_db: finite(0.1),
+        stop_hz: Some(hz(stop_hz)),
+        stop_db: Some(finite(40.0)),
+        width_hz: Some(hz(width_hz)),
+    };
+    Methods {
+        sentence: "Recordings were filtered.".to_owned(),
+        program: "bandproof 0.1.0".to_owned(),
+        applied: true,
+        rate_hz: 48_000,
+        design: Some("analog prototypes".to_owned()),
+        total_order: 2,
+        sections: 1,
+        passes: 1,
+        direction: "forward".to_owned(),
+        causal: true,
+        phase: "non-linear".to_owned(),
+        start_state: Some("steady".to_owned()),
+        settling_s: seconds(2.2),
+        arithmetic: Some("double precision".to_owned()),
+        dither: "triangular-1".to_owned(),
+        stages: vec![MethodsStage {
+            stage: 1,
+            kind: "bandstop".to_owned(),
+            family: Some("elliptic".to_owned()),
+            order: Some(1),
+            total_order: 2,
+            sections: 1,
+            edge_definition: EdgeDefinition::RippleEnds,
+            ripple_db: Some(finite(0.1)),
+            stop_db: Some(finite(40.0)),
+            lines: vec![MethodsLine {
+                line: Some(1),
+                edges_hz: vec![hz(48.4), hz(51.6)],
+                transitions: vec![transition(48.4, 49.52, 1.12), transition(51.6, 50.43, 1.17)],
+            }],
+        }],
+        bands: vec![MethodsBand {
+            name: "pump hum x1".to_owned(),
+            from_hz: hz(49.5),
+            to_hz: hz(50.5),
+            require: reduce(30.0),
+            attenuation_db: db(32.9),
+            deviation_db: None,
+            group_delay_s: None,
+        }],
+    }
+}
+
 pub fn design() -> DesignEntry {
     DesignEntry {
+        methods: methods(),
         rate_hz: 48_000,
         left_out: vec![LeftOutEntry {
             what: "band \"whine\"".to_owned(),
