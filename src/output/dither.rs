@@ -5,12 +5,12 @@
 pub const DITHER_NAME: &str = "triangular-1";
 
 /// 2^64 over the golden ratio, odd: the increment of SplitMix64.
-const GOLDEN: u64 = 0x9e37_79b9_7f4a_7c15;
+pub(crate) const GOLDEN: u64 = 0x9e37_79b9_7f4a_7c15;
 
 /// The finalizer of SplitMix64 (G. L. Steele, D. Lea, C. H. Flood, "Fast splittable
 /// pseudorandom number generators", OOPSLA 2014; constants of D. Stafford's variant 13).
 #[inline(always)]
-fn mix(mut z: u64) -> u64 {
+pub(crate) fn mix(mut z: u64) -> u64 {
     z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
     z = (z ^ (z >> 27)).wrapping_mul(0x94d0_49bb_1331_11eb);
     z ^ (z >> 31)

@@ -8,4 +8,5 @@ mod dither;
 mod shape;
 
 pub use dither::{DITHER_NAME, triangular};
+pub(crate) use dither::{GOLDEN, mix};
 pub use shape::{Output, OutputFigures, OutputPlan};
