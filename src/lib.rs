@@ -7,8 +7,14 @@
 //! both sides, [`evidence`] turns spectra into verdicts, [`report`] serializes
 //! them. What the filter is comes from [`spec`] and [`design`].
 //!
-//! Nothing checks itself: `design`, `cascade`, and `spectrum` with `evidence` do not
-//! call one another.
+//! Recordings that something else filtered skip `cascade` and `output`: [`align`] lays
+//! each against what went in, and from [`spectrum`] on the way is the same. [`excite`]
+//! writes what to send through a device for that. [`package`] puts what others need
+//! around finished outputs, and [`recheck`] holds a dataset against its report, on request
+//! with the code of [`job`] once more.
+//!
+//! Nothing checks itself: `design`, `cascade`, and `spectrum` with `evidence` and `align`
+//! do not call one another.
 //!
 //! # Conventions
 //! * Samples are `f64`, full scale is 1.0; an n-bit integer sample is divided by
@@ -19,12 +25,18 @@
 //! * Multi-channel blocks are planar: one `Vec<f64>` a channel.
 //! * Spectra are one-sided sums over segments, periodic window, no detrending.
 
+pub mod align;
 pub mod cascade;
 pub mod design;
 pub mod evidence;
+pub mod excite;
+mod files;
 pub mod job;
 pub mod output;
+pub mod package;
+pub mod recheck;
 pub mod report;
+mod schema;
 pub mod section;
 pub mod spec;
 pub mod spectrum;

@@ -1,6 +1,7 @@
 //! A recording's entry in the report.
 
 use super::failure::Failure;
+use super::paths;
 use super::plan::{Planned, RatePlan};
 use super::recording::{Processed, RecordingError};
 use crate::report::{
@@ -12,7 +13,7 @@ use crate::wave::{Header, stale_chunks};
 /// A recording that could not be processed, with what is known of its header.
 pub(super) fn failed(planned: &Planned, failure: &Failure, header: Option<&Header>) -> Recording {
     let mut recording = Recording::failed(planned.shown.clone(), failure.to_string());
-    recording.notes = name_note(planned);
+    recording.notes = name_note(planned.escaped);
     if let Some(header) = header {
         recording.notes.extend(header.notes.iter().cloned());
         // An overload is known only when the recording has been read to its end.
@@ -27,11 +28,24 @@ pub(super) fn failed(planned: &Planned, failure: &Failure, header: Option<&Heade
     recording
 }
 
-fn name_note(planned: &Planned) -> Vec<String> {
-    if planned.escaped { vec!["the file's name is not UTF-8; it is shown percent-escaped".into()] } else { Vec::new() }
+/// What a reader must know of a name that is shown escaped.
+pub(super) fn name_note(escaped: bool) -> Vec<String> {
+    if escaped { vec![paths::ESCAPED_NOTE.into()] } else { Vec::new() }
 }
 
-fn input_entry(header: &Header, sha256: Option<String>, full_scale_runs: Option<u64>) -> Input {
+/// What runs at full scale mean.
+fn run_note(runs: u64) -> Option<String> {
+    (runs > 0).then(|| {
+        format!(
+            "the input holds {runs} run{} of samples at full scale: if they are clipped, filtering \
+             does not undo that",
+            if runs == 1 { "" } else { "s" }
+        )
+    })
+}
+
+/// The file as read; hash and runs are known when it was read to its end.
+pub(super) fn input_entry(header: &Header, sha256: Option<String>, full_scale_runs: Option<u64>) -> Input {
     Input {
         sha256,
         bytes: header.file_bytes,
@@ -81,19 +95,12 @@ pub(super) fn done(
 }
 
 fn notes(planned: &Planned, header: &Header, processed: &Processed, rate: &RatePlan) -> Vec<String> {
-    let mut notes = name_note(planned);
+    let mut notes = name_note(planned.escaped);
     notes.extend(header.notes.iter().chain(&processed.input.notes).chain(&processed.written.notes).cloned());
     if !rate.treatment.identity {
         notes.extend(stale_chunks(header));
     }
-    let runs = processed.input.full_scale_runs;
-    if runs > 0 {
-        notes.push(format!(
-            "the input holds {runs} run{} of samples at full scale: if they are clipped, filtering \
-             does not undo that",
-            if runs == 1 { "" } else { "s" }
-        ));
-    }
+    notes.extend(run_note(processed.input.full_scale_runs));
     if processed.scaled {
         notes.push(format!(
             "filtered again with a gain of {:.3} dB to fit full scale: levels can't be compared with other recordings",

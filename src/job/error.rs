@@ -1,7 +1,8 @@
 //! Why a run can't start or can't end.
 
-use super::RecordingError;
+use super::{NoiseError, RecordingError};
 use crate::design::DesignError;
+use crate::package::PackageError;
 use std::io;
 use std::path::PathBuf;
 
@@ -57,9 +58,50 @@ pub enum JobError {
         /// `output folder` or `--report`.
         what: &'static str,
     },
-    /// The report would stand where an output goes.
-    #[error("--report {0} is also the name of an output recording: choose another")]
-    ReportIsOutput(PathBuf),
+    /// Two files would have the same name.
+    #[error("{option} {path} is also the name of {what}: choose another")]
+    SameName {
+        /// The option that says where a file goes.
+        option: &'static str,
+        /// Where.
+        path: PathBuf,
+        /// What else goes there: `an output recording` or another option.
+        what: &'static str,
+    },
+    /// One of the two sides of `measure` is a folder, the other a recording.
+    #[error(
+        "{before} is {before_is}, {after} is {after_is}: give two folders, whose recordings are paired by their paths, \
+         or two recordings"
+    )]
+    Sides {
+        /// As given.
+        before: PathBuf,
+        /// `a folder` or `a file`.
+        before_is: &'static str,
+        /// As given.
+        after: PathBuf,
+        /// `a folder` or `a file`.
+        after_is: &'static str,
+    },
+    /// Nothing to measure.
+    #[error("no pairs: no recording has the same path below {before} and {after}, which hold {found}")]
+    NoPairs {
+        /// As given.
+        before: PathBuf,
+        /// As given.
+        after: PathBuf,
+        /// How many recordings each has, and what the first are called.
+        found: String,
+    },
+    /// `--noise` is no recording.
+    #[error("--noise: {0}")]
+    Noise(NoiseError),
+    /// The dataset package can't be made, and nothing was written.
+    #[error("--emit: {0}")]
+    NoPackage(PackageError),
+    /// The dataset package could not be written; everything else was.
+    #[error("the package could not be written: {0}; recordings and report are complete")]
+    Package(PackageError),
     /// A file would have to stand where a folder, a device or a pipe is.
     #[error("{0} is there already and no regular file, so no file can take its name: choose another place")]
     NotAFile(PathBuf),
@@ -156,9 +198,11 @@ impl JobError {
         match self {
             // The spec asks for more than can be checked.
             JobError::NoWitness { cause, .. } => matches!(cause, RecordingError::RingsTooLong { .. }),
-            JobError::Witness { .. } | JobError::Defect(_) | JobError::Threads { .. } | JobError::Record { .. } => {
-                false
-            }
+            JobError::Witness { .. }
+            | JobError::Defect(_)
+            | JobError::Threads { .. }
+            | JobError::Record { .. }
+            | JobError::Package(_) => false,
             _ => true,
         }
     }

@@ -1,5 +1,6 @@
 //! Why one recording failed.
 
+use super::pair::PairError;
 use super::recording::RecordingError;
 use crate::report::NotFinite;
 use crate::wave::WaveError;
@@ -9,11 +10,13 @@ use std::panic::{AssertUnwindSafe, catch_unwind};
 
 /// Why one recording failed, beyond what [`super::recording::process`] can say.
 #[derive(Debug, thiserror::Error)]
-pub(super) enum Failure {
+pub(crate) enum Failure {
     #[error("{0}")]
     Header(String),
     #[error(transparent)]
     Recording(#[from] RecordingError),
+    #[error(transparent)]
+    Pair(#[from] PairError),
     #[error("can't be opened: {0}; see to its permissions, or leave the recording out")]
     Open(io::Error),
     #[error("its output can't be written: {0}; see to the folder's permissions and the room on the disk")]
@@ -31,7 +34,7 @@ impl From<WaveError> for Failure {
 }
 
 /// Runs `work`; a panic in it is a failure of that recording, not of the run.
-pub(super) fn contained<T>(work: impl FnOnce() -> Result<T, Failure>) -> Result<T, Failure> {
+pub(crate) fn contained<T>(work: impl FnOnce() -> Result<T, Failure>) -> Result<T, Failure> {
     catch_unwind(AssertUnwindSafe(work)).unwrap_or_else(|panic| Err(Failure::Panic(panic_text(panic.as_ref()))))
 }
 

@@ -23,15 +23,8 @@ pub fn unmake(folders: &[PathBuf]) {
     }
 }
 
-/// What is wrong with the place of a temporary file, without that file's name, which
-/// would mean nothing to a user.
-pub fn cause_without_name(error: io::Error) -> io::Error {
-    match error.kind() {
-        io::ErrorKind::NotFound => io::Error::new(io::ErrorKind::NotFound, "no such folder"),
-        kind if kind.to_string() == io::ErrorKind::Other.to_string() => error,
-        kind => kind.into(),
-    }
-}
+/// The note of a recording whose path is escaped.
+pub const ESCAPED_NOTE: &str = "the file's name is not UTF-8; it is shown percent-escaped";
 
 /// A relative path with `/` between its components. Names that are not UTF-8 are
 /// percent-escaped (every byte outside UTF-8 and every `%` of that name); the second

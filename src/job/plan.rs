@@ -1,13 +1,16 @@
 //! The plan: everything that is decided before anything is written.
 
 use super::discover::{Discovered, Found, discover};
+use super::guard::Guarded;
 use super::recording::Treatment;
 use super::witness::{Witness, witness};
 use super::{FilterJob, JobError, paths};
 use crate::cascade::Cascade;
 use crate::design::{Design, design};
 use crate::evidence::BandTask;
+use crate::files::place::real;
 use crate::output::DITHER_NAME;
+use crate::package;
 use crate::spec::{Dither, OutputEncoding, Spec};
 use crate::spectrum::TransformCache;
 use crate::wave::{Encoding, Header, Reader, SampleFormat};
@@ -94,7 +97,7 @@ impl Plan {
         let recordings: Vec<Planned> =
             discovered.recordings.into_par_iter().map(|found| Planned::new(found, &job.output)).collect();
         let report = job.report.clone().unwrap_or_else(|| job.output.join(REPORT_FILE_NAME));
-        super::guard::check(job, &recordings, &report)?;
+        refuse_to_overwrite(job, &recordings, &report)?;
         let rates = plan_rates(&job.spec.spec, &recordings)?;
         let unreadable = discovered.unreadable.into_iter().map(|(path, why)| (paths::shown(&path).0, why)).collect();
         Ok(Plan {
@@ -106,6 +109,27 @@ impl Plan {
             report,
         })
     }
+}
+
+/// What would be written must not be there, and a package must be possible.
+fn refuse_to_overwrite(job: &FilterJob, recordings: &[Planned], report: &Path) -> Result<(), JobError> {
+    let contents = super::filter::package_contents(job, report, "");
+    let package = match job.emit {
+        Some(emit) => {
+            let mut planned_paths = recordings.iter().map(|planned| planned.found.relative.as_path());
+            package::check(emit, &contents, &mut planned_paths).map_err(JobError::NoPackage)?;
+            package::files(emit, &contents)
+        }
+        None => Vec::new(),
+    };
+    let documents = [("--report", report)].into_iter().chain(job.table.as_deref().map(|table| ("--csv", table)));
+    super::guard::check(&Guarded {
+        reads: recordings.iter().map(|planned| planned.found.path.as_path()).chain(job.spec_path.as_deref()).collect(),
+        input: &job.input,
+        outputs: recordings.iter().map(|planned| planned.target.as_path()).collect(),
+        documents: documents.chain(package.iter().map(|file| ("--emit", file.as_path()))).collect(),
+        replace: job.replace,
+    })
 }
 
 impl Planned {
@@ -142,7 +166,7 @@ fn count(number: u64, what: &str) -> String {
 fn outside_input(input: &Path, output: &Path) -> Result<(), JobError> {
     let inside = |relation| JobError::OutputInInput { output: output.into(), input: input.into(), relation };
     let real_input = input.canonicalize().map_err(|cause| JobError::Input { path: input.into(), cause })?;
-    let real_output = canonical_as_far_as_it_exists(output);
+    let real_output = real(output);
     if real_output == real_input {
         return Err(inside("the same as"));
     }
@@ -153,25 +177,6 @@ fn outside_input(input: &Path, output: &Path) -> Result<(), JobError> {
         return Err(JobError::OutputIsFile(output.into()));
     }
     Ok(())
-}
-
-/// The path with its existing part resolved and the rest as written.
-pub(super) fn canonical_as_far_as_it_exists(path: &Path) -> PathBuf {
-    let absolute = std::path::absolute(path).unwrap_or_else(|_| path.into());
-    for ancestor in absolute.ancestors() {
-        if let Ok(real) = ancestor.canonicalize() {
-            // Without `..`: the rest does not exist, so no link can hide in it.
-            let mut whole = real;
-            for part in absolute.strip_prefix(ancestor).unwrap_or(Path::new("")).components() {
-                match part {
-                    std::path::Component::ParentDir => _ = whole.pop(),
-                    other => whole.push(other),
-                }
-            }
-            return whole;
-        }
-    }
-    absolute
 }
 
 fn plan_rates(spec: &Spec, recordings: &[Planned]) -> Result<BTreeMap<u32, RatePlan>, JobError> {

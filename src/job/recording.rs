@@ -3,21 +3,16 @@
 //! [`process`] is the only way samples go through the tool: recordings and the
 //! witness alike.
 
-use super::collector::{Collector, Segment};
+use super::collector::Collector;
+use super::segments::{self, Passing, block_frames};
 use crate::cascade::{Cascade, Filter};
 use crate::evidence::{self, BandFigures, BandTask, Measured};
 use crate::output::{Output, OutputFigures, OutputPlan};
 use crate::spec::{Overload, Requirement};
-use crate::spectrum::{Accumulator, SegmentPlan, Spectra, TransformCache, segment_frames};
+use crate::spectrum::{SegmentPlan, Spectra, TransformCache, segment_frames};
 use crate::wave::{Header, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
 use std::io::{self, Read, Seek, SeekFrom, Write};
 use std::sync::Arc;
-
-/// Frames filtered at a time: a block of every plane stays in the second-level cache.
-const BLOCK_FRAMES: usize = 16_384;
-/// Samples of all channels in a block at most: 32 MB on each side, whatever number of
-/// channels a header claims.
-const BLOCK_SAMPLES: usize = 1 << 22;
 
 /// What is done to the recordings of one sample rate.
 #[derive(Clone, Debug)]
@@ -183,15 +178,18 @@ fn run<R: Read + Seek + Send, W: Write + Send>(
         ),
         before: vec![Vec::new(); channels],
         after: vec![Vec::new(); channels],
-        collector: plan.clone().map(|plan| {
-            let transform = treatment.transforms.get(plan.segment_frames);
-            Collector::new(plan, transform, channels)
-        }),
         frame_bytes: header.data_bytes / header.frames.max(1),
+        advanced,
         ended: false,
     };
-    let spectra = stream.measure(plan.as_ref(), treatment, &header, advanced)?;
-    stream.run_out(advanced)?;
+    let spectra = match &plan {
+        Some(plan) => {
+            let cross = evidence::cross_ranges(header.rate_hz, plan.segment_frames, &treatment.bands);
+            segments::spectra(&mut stream, plan, channels, &cross, &treatment.transforms)?
+        }
+        None => Vec::new(),
+    };
+    stream.run_out()?;
     let Stream { writer, input, output, .. } = stream;
     let (_, written) = writer.finish(input)?;
     let figures = Processed {
@@ -255,6 +253,7 @@ fn judge(
             rounding_power_before: figures.input.rounding_power[channel],
             rounding_power_after: figures.output.rounding_power[channel],
             gain,
+            pair: None,
         };
         evidence::judge_all(&measured, &treatment.bands)
     };
@@ -269,55 +268,16 @@ struct Stream<'a, R, W> {
     output: Output,
     before: Vec<Vec<f64>>,
     after: Vec<Vec<f64>>,
-    collector: Option<Collector>,
     frame_bytes: u64,
+    advanced: &'a (dyn Fn(u64) + Sync),
     ended: bool,
 }
 
-impl<R: Read + Seek + Send, W: Write + Send> Stream<'_, R, W> {
-    /// Streams until the last segment is transformed; the spectra by channel.
-    fn measure(
-        &mut self,
-        plan: Option<&SegmentPlan>,
-        treatment: &Treatment,
-        header: &Header,
-        advanced: &(dyn Fn(u64) + Sync),
-    ) -> Result<Vec<Spectra>, RecordingError> {
-        let Some(plan) = plan else { return Ok(Vec::new()) };
-        let length = plan.segment_frames;
-        let cross = evidence::cross_ranges(header.rate_hz, length, &treatment.bands);
-        let transform = treatment.transforms.get(length);
-        let accumulator = |_| Accumulator::new(Arc::clone(&transform), cross.clone());
-        let mut sums: Vec<Accumulator> = (0..header.channels).map(accumulator).collect();
-        let mut full: Option<Segment> = None;
-        for _ in 0..plan.starts.len() {
-            let (filled, ()) = rayon::join(|| self.fill(advanced), || add_segment(&mut sums, full.take()));
-            filled?;
-            full = self.collector.as_mut().and_then(Collector::next_ready);
-        }
-        add_segment(&mut sums, full);
-        self.collector = None;
-        Ok(sums.into_iter().map(Accumulator::finish).collect())
-    }
-
-    /// Streams until the next segment is complete.
-    fn fill(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
-        while !self.ended && !self.collector.as_ref().is_none_or(Collector::is_ready) {
-            self.step(advanced)?;
-        }
-        Ok(())
-    }
-
-    /// Streams to the end without measuring.
-    fn run_out(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
-        while !self.ended {
-            self.step(advanced)?;
-        }
-        Ok(())
-    }
+impl<R: Read + Seek + Send, W: Write + Send> Passing for Stream<'_, R, W> {
+    type Error = RecordingError;
 
     /// One block: read, filter, shape, write.
-    fn step(&mut self, advanced: &(dyn Fn(u64) + Sync)) -> Result<(), RecordingError> {
+    fn step(&mut self, collector: Option<&mut Collector>) -> Result<(), RecordingError> {
         self.before.iter_mut().for_each(Vec::clear);
         self.after.iter_mut().for_each(Vec::clear);
         let frames = self.input.read(block_frames(self.before.len()), &mut self.before)?;
@@ -329,21 +289,15 @@ impl<R: Read + Seek + Send, W: Write + Send> Stream<'_, R, W> {
         }
         self.output.shape(&mut self.after);
         self.writer.write(&self.after)?;
-        if let Some(collector) = &mut self.collector {
+        if let Some(collector) = collector {
             collector.take(&self.before, &self.after);
         }
-        advanced(frames as u64 * self.frame_bytes);
+        (self.advanced)(frames as u64 * self.frame_bytes);
         Ok(())
     }
-}
 
-fn block_frames(channels: usize) -> usize {
-    BLOCK_FRAMES.min(BLOCK_SAMPLES / channels.max(1)).max(1)
-}
-
-fn add_segment(sums: &mut [Accumulator], segment: Option<Segment>) {
-    for (sum, packed) in sums.iter_mut().zip(segment.into_iter().flatten()) {
-        sum.add_packed(packed);
+    fn has_ended(&self) -> bool {
+        self.ended
     }
 }
 
@@ -364,14 +318,5 @@ mod tests {
             // Dither takes up to one step more.
             assert!(valid_bits <= 3 || libm::rint(steps + 1.0) <= highest, "{valid_bits} bits: {steps} steps");
         }
-    }
-
-    #[test]
-    fn blocks_of_any_number_of_channels_are_bounded() {
-        for channels in [0, 1, 2, 256, 257, 65_535] {
-            let frames = block_frames(channels);
-            assert!(frames >= 1 && frames * channels <= BLOCK_SAMPLES, "{channels} channels: {frames} frames");
-        }
-        assert_eq!((block_frames(2), block_frames(65_535)), (BLOCK_FRAMES, 64));
     }
 }

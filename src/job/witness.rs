@@ -1,5 +1,5 @@
 //! The witness: a recording of one impulse goes through the code that filters
-//! recordings, and what comes out is held against the exact response of the design.
+//! recordings, and what comes out must be what the sections' exact response says.
 //!
 //! It shows for each sample rate of a run that the samples that come out are those
 //! of the designed transfer function, whatever the recordings contain.

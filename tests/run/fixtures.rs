@@ -52,7 +52,12 @@ impl Bench {
 
     /// Writes bytes below `in/`.
     pub fn input(&self, relative: &str, bytes: &[u8]) -> PathBuf {
-        let path = self.path("in").join(relative);
+        self.write(&format!("in/{relative}"), bytes)
+    }
+
+    /// Writes bytes below the folder.
+    pub fn write(&self, relative: &str, bytes: &[u8]) -> PathBuf {
+        let path = self.path(relative);
         fs::create_dir_all(path.parent().unwrap()).unwrap();
         fs::write(&path, bytes).unwrap();
         path
