@@ -1,6 +1,8 @@
 //! What can be typed.
 
 use super::color::When;
+use bandproof::job::pair::DEFAULT_MAX_DELAY_S;
+use bandproof::package::Emit;
 use clap::{Args, Parser, Subcommand};
 use std::num::NonZeroUsize;
 use std::path::PathBuf;
@@ -18,9 +20,9 @@ pub struct Cli {
 const STATUSES: &str = "\
 Exit status:
   0    every recording done, no band missed
-  1    some band missed (with --strict: or unproven)
-  2    command line, spec or folders wrong, or a requirement out of the filters' reach: nothing
-       was written
+  1    some band missed (with --strict: or unproven); recheck: something is not as the report says
+  2    command line, spec, report or folders wrong, or a requirement out of the filters' reach:
+       nothing was written
   3    some recording could not be processed, or the report could not be written
   130  interrupted";
 
@@ -32,6 +34,14 @@ pub enum Command {
     Filter(FilterArgs),
     /// Show what the spec becomes at a sample rate, without touching a recording
     Design(DesignArgs),
+    /// Measure pairs of recordings that something else filtered, and write the report
+    Measure(MeasureArgs),
+    /// Write a recording to play through a device and measure with
+    Excite(ExciteArgs),
+    /// Check that a dataset still is what its report says
+    Recheck(RecheckArgs),
+    /// Print the JSON Schema of spec files or of reports
+    Schema(SchemaArgs),
 }
 
 /// `filter`.
@@ -50,6 +60,13 @@ pub struct FilterArgs {
     /// Where to write the report [default: bandproof-report.json in OUT]
     #[arg(long, value_name = "FILE")]
     pub report: Option<PathBuf>,
+    /// Also write the figures as a flat table: one row a recording, channel and band
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Also make a dataset package of outputs and report: `datapackage` writes a descriptor beside
+    /// the report, `bagit` makes the folder above OUT a bag (OUT must be named `data`)
+    #[arg(long, value_name = "FORM", value_enum)]
+    pub emit: Option<EmitForm>,
     /// Only plan and check the design; write nothing
     #[arg(long)]
     pub dry_run: bool,
@@ -89,6 +106,145 @@ pub struct DesignArgs {
     pub common: CommonArgs,
 }
 
+/// `measure`.
+#[derive(Debug, Args)]
+#[command(max_term_width = 100)]
+pub struct MeasureArgs {
+    /// The spec file, .toml or .json
+    #[arg(value_name = "SPEC")]
+    pub spec: PathBuf,
+    /// Folder of recordings as they went in, or one recording
+    #[arg(value_name = "BEFORE")]
+    pub before: PathBuf,
+    /// Folder of the same recordings as they came out, paired by their paths below it, or one recording
+    #[arg(value_name = "AFTER")]
+    pub after: PathBuf,
+    /// Where to write the report
+    #[arg(long, value_name = "FILE", default_value = "bandproof-report.json")]
+    pub report: PathBuf,
+    /// Also write the figures as a flat table: one row a recording, channel and band
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Recording of the idle device: its spectrum is taken for what the device adds
+    #[arg(long, value_name = "FILE")]
+    pub noise: Option<PathBuf>,
+    /// Delay of AFTER, where it is known, frames; may be negative and have a fraction
+    #[arg(long, value_name = "FRAMES", value_parser = finite, allow_negative_numbers = true, conflicts_with = "max_delay")]
+    pub delay: Option<f64>,
+    /// Largest delay either way to look for, seconds
+    #[arg(long, value_name = "S", value_parser = max_delay, allow_negative_numbers = true, default_value_t = DEFAULT_MAX_DELAY_S)]
+    pub max_delay: f64,
+    /// Allow report and table to replace files that exist already
+    #[arg(long)]
+    pub replace: bool,
+    /// Take only recordings whose name matches, or whose path below BEFORE if there is a `/` in the
+    /// pattern; may be given more than once
+    #[arg(long, value_name = "GLOB")]
+    pub include: Vec<String>,
+    /// Leave out recordings that match in the same way; may be given more than once
+    #[arg(long, value_name = "GLOB")]
+    pub exclude: Vec<String>,
+    /// End with status 1 also where a band stays unproven
+    #[arg(long)]
+    pub strict: bool,
+    /// What every command takes.
+    #[command(flatten)]
+    pub common: CommonArgs,
+}
+
+/// `excite`.
+#[derive(Debug, Args)]
+#[command(max_term_width = 100)]
+pub struct ExciteArgs {
+    /// The spec file, .toml or .json
+    #[arg(value_name = "SPEC")]
+    pub spec: PathBuf,
+    /// The recording to write, .wav
+    #[arg(value_name = "FILE")]
+    pub file: PathBuf,
+    /// Sample rate
+    #[arg(long, value_name = "HZ", value_parser = rate_hz, allow_negative_numbers = true)]
+    pub rate: u32,
+    /// Length
+    #[arg(long, value_name = "S", value_parser = finite, allow_negative_numbers = true)]
+    pub seconds: f64,
+    /// Allow the file to be overwritten
+    #[arg(long)]
+    pub replace: bool,
+    /// What every command takes.
+    #[command(flatten)]
+    pub common: CommonArgs,
+}
+
+/// `recheck`.
+#[derive(Debug, Args)]
+#[command(max_term_width = 100)]
+pub struct RecheckArgs {
+    /// A report of `filter` or `measure`
+    #[arg(value_name = "REPORT")]
+    pub report: PathBuf,
+    /// Where the inputs are (BEFORE of `measure`); without it inputs are not looked at
+    #[arg(long, value_name = "DIR")]
+    pub input: Option<PathBuf>,
+    /// Where the outputs are (AFTER of `measure`) [default: the folder of the report]
+    #[arg(long, value_name = "DIR")]
+    pub output: Option<PathBuf>,
+    /// Filter the inputs again and require the same outputs, bit for bit
+    #[arg(long, requires = "input")]
+    pub replay: bool,
+    /// Measure again and require the same verdicts and, within 0.002 dB, the same figures
+    #[arg(long, requires = "input")]
+    pub remeasure: bool,
+    /// With --remeasure: the recording of the idle device that `measure` was given
+    #[arg(long, value_name = "FILE", requires = "remeasure")]
+    pub noise: Option<PathBuf>,
+    /// With --remeasure: also write the figures as a flat table
+    #[arg(long, value_name = "FILE", requires = "remeasure")]
+    pub csv: Option<PathBuf>,
+    /// Allow the table to replace a file that exists already
+    #[arg(long)]
+    pub replace: bool,
+    /// What every command takes.
+    #[command(flatten)]
+    pub common: CommonArgs,
+}
+
+/// `schema`.
+#[derive(Debug, Args)]
+#[command(max_term_width = 100)]
+pub struct SchemaArgs {
+    /// Of which file
+    #[arg(value_name = "FILE", value_enum)]
+    pub of: SchemaOf,
+}
+
+/// The two files that have a schema.
+#[derive(Clone, Copy, Debug, clap::ValueEnum)]
+pub enum SchemaOf {
+    /// Spec files
+    Spec,
+    /// Reports
+    Report,
+}
+
+/// `--emit`.
+#[derive(Clone, Copy, Debug, clap::ValueEnum)]
+pub enum EmitForm {
+    /// A Data Package descriptor
+    Datapackage,
+    /// A bag (RFC 8493)
+    Bagit,
+}
+
+impl From<EmitForm> for Emit {
+    fn from(form: EmitForm) -> Self {
+        match form {
+            EmitForm::Datapackage => Emit::Datapackage,
+            EmitForm::Bagit => Emit::Bagit,
+        }
+    }
+}
+
 /// What every command takes.
 #[derive(Debug, Args)]
 pub struct CommonArgs {
@@ -116,6 +272,15 @@ impl CommonArgs {
 fn rate_hz(text: &str) -> Result<u32, String> {
     let expected = || format!("expected a whole number of hertz from 1 to {}, as 44100", u32::MAX);
     text.parse().ok().filter(|&rate_hz| rate_hz > 0).ok_or_else(expected)
+}
+
+fn finite(text: &str) -> Result<f64, String> {
+    text.parse().ok().filter(|number: &f64| number.is_finite()).ok_or_else(|| "expected a number".to_owned())
+}
+
+fn max_delay(text: &str) -> Result<f64, String> {
+    let expected = || "expected a number of seconds above 0 and at most 600".to_owned();
+    text.parse().ok().filter(|&seconds: &f64| seconds > 0.0 && seconds <= 600.0).ok_or_else(expected)
 }
 
 fn threads(text: &str) -> Result<NonZeroUsize, String> {

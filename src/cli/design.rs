@@ -75,6 +75,7 @@ fn text(arguments: &DesignArgs, spec: &SpecFile, designs: &[DesignEntry]) -> Str
     for design in designs {
         text.push('\n');
         text.push_str(&design_text::text(design, palette));
+        text.push_str(&design_text::methods(design, palette));
     }
     text
 }

@@ -192,6 +192,12 @@ fn times(design: &DesignEntry, palette: Palette) -> String {
     table.render(palette, 0, WIDTH) + &wrapped(note, 0, 0, WIDTH)
 }
 
+/// The sentence of its methods; it speaks of recordings as filtered, so it is not for a plan.
+pub fn methods(design: &DesignEntry, palette: Palette) -> String {
+    heading("For a methods section, once recordings are filtered with this", palette)
+        + &wrapped(&design.methods.sentence, 0, 0, WIDTH)
+}
+
 fn hertz(hz: Hz) -> String {
     trimmed(hz.get(), 3)
 }
@@ -239,13 +245,21 @@ mod tests {
             ],
             "passes": 1, "settling_s": 1.73, "max_pole_radius": 0.999_930_801, "dither": "triangular-1",
             "bands": [band, kept], "witness": null,
+            "methods": {
+                "sentence": "Recordings were filtered with a filter of made-up figures, told at such a length that it \
+                             takes a second line, and that is all.",
+                "program": "bandproof 0.1.0", "applied": true, "rate_hz": 48_000, "design": null, "total_order": 6,
+                "sections": 4, "passes": 1, "direction": "forward", "causal": true, "phase": "non-linear",
+                "start_state": "", "settling_s": 1.73, "arithmetic": "", "dither": "triangular-1", "stages": [],
+                "bands": [],
+            },
         }))
         .unwrap()
     }
 
     #[test]
     fn a_design_looks_like_this() {
-        let text = text(&design(), Palette::OFF);
+        let text = text(&design(), Palette::OFF) + &methods(&design(), Palette::OFF);
         assert_eq!(text, include_str!("../../tests/cli/snapshots/design.txt"), "\n{text}");
         assert!(text.lines().all(|line| line.chars().count() <= WIDTH));
     }

@@ -81,7 +81,15 @@ mod tests {
             let name = "hum".to_owned();
             let band = BandSummary { name, met: 1, missed, unproven, worst_db: None, median_db: None };
             let skipped = Skipped::default();
-            let summary = Summary { recordings: 3, done: 3 - failed, failed, skipped, bands: vec![band], verdict };
+            let summary = Summary {
+                recordings: 3,
+                done: 3 - failed,
+                failed,
+                skipped,
+                unpaired: None,
+                bands: vec![band],
+                verdict,
+            };
             assert_eq!(Exit::of_run(&summary, false), plain, "{summary:?}");
             assert_eq!(Exit::of_run(&summary, true), strict, "{summary:?}");
         }

@@ -4,12 +4,20 @@ mod args;
 mod color;
 mod design;
 mod design_text;
+mod excite;
+mod excite_text;
 mod exit;
 mod filter;
 mod interrupt;
+mod measure;
 mod names;
+mod outcome;
+mod pairs_text;
 mod plan_text;
 mod progress;
+mod recheck;
+mod recheck_text;
+mod schema;
 mod screen;
 mod summary_text;
 mod table;
@@ -30,6 +38,10 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Exit {
     match Cli::try_parse_from(arguments) {
         Ok(Cli { command: Command::Filter(arguments) }) => filter::run(&arguments),
         Ok(Cli { command: Command::Design(arguments) }) => design::run(&arguments),
+        Ok(Cli { command: Command::Measure(arguments) }) => measure::run(&arguments),
+        Ok(Cli { command: Command::Excite(arguments) }) => excite::run(&arguments),
+        Ok(Cli { command: Command::Recheck(arguments) }) => recheck::run(&arguments),
+        Ok(Cli { command: Command::Schema(arguments) }) => schema::run(&arguments),
         Err(answer) if answer.use_stderr() => {
             let text = answer.render().to_string();
             match answer.kind() {

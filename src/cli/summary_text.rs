@@ -3,7 +3,7 @@
 use super::color::{Palette, Style};
 use super::table::{Table, wrapped};
 use super::units::{bytes, counted, seconds, trimmed};
-use super::{WIDTH, names};
+use super::{WIDTH, names, pairs_text};
 use bandproof::job::Outcome;
 use bandproof::report::{
     BandSummary, Db, DesignBand, DesignEntry, MissedItem, NotFinite, ReasonCode, Require, Summary, UnprovenItem,
@@ -20,11 +20,15 @@ pub fn text(spec: &Spec, outcome: &Outcome, palette: Palette) -> String {
     let requirements = requirements(spec).unwrap_or_default();
     let parts = [
         done(outcome),
+        outcome.summary.unpaired.as_ref().map_or(String::new(), |one_sided| pairs_text::unpaired(one_sided, palette)),
+        outcome.highlights.pairs.as_ref().map_or(String::new(), |pairs| pairs_text::alignment(pairs, palette)),
         bands(&outcome.summary, &requirements, palette),
         missed(&outcome.highlights.missed, palette),
+        level_as_a_whole(spec, outcome),
         failed(outcome, palette),
         unproven(outcome, palette),
-        startup(&outcome.designs, palette),
+        // What something else filtered starts in its own way.
+        if measured_pairs(outcome) { String::new() } else { startup(&outcome.designs, palette) },
         closing(outcome, palette),
     ];
     let parts: Vec<_> = parts.into_iter().filter(|part| !part.is_empty()).collect();
@@ -45,6 +49,11 @@ pub fn required(require: Option<Require>) -> String {
     }
 }
 
+/// Whether the run was one of `measure`.
+fn measured_pairs(outcome: &Outcome) -> bool {
+    outcome.summary.unpaired.is_some()
+}
+
 fn done(outcome: &Outcome) -> String {
     let Summary { recordings, done, failed, skipped, .. } = &outcome.summary;
     let rate = if outcome.seconds > 0.0 {
@@ -53,21 +62,25 @@ fn done(outcome: &Outcome) -> String {
         String::new()
     };
     let failed = if *failed > 0 { format!(", {failed} failed") } else { String::new() };
+    let (what, treated, left_alone) = match measured_pairs(outcome) {
+        true => ("pair", "measured", "passed over"),
+        false => ("recording", "filtered and measured", "not copied"),
+    };
     let first = format!(
-        "{done} of {} filtered and measured{failed}: {} read in {}{rate}.",
-        counted(*recordings, "recording"),
+        "{done} of {} {treated}{failed}: {} read in {}{rate}.",
+        counted(*recordings, what),
         bytes(outcome.bytes_read),
         seconds(outcome.seconds),
     );
     let mut text = wrapped(&first, 0, 0, WIDTH);
     if !outcome.complete {
-        let others = counted(outcome.not_begun, "recording");
+        let others = counted(outcome.not_begun, what);
         let line = format!("Interrupted with {others} not begun: what follows leaves them out.");
         text.push_str(&wrapped(&line, 0, 0, WIDTH));
     }
     let mut left = Vec::new();
     if skipped.other_files > 0 {
-        left.push(format!("{} not copied", counted(skipped.other_files, "other file")));
+        left.push(format!("{} {left_alone}", counted(skipped.other_files, "other file")));
     }
     if skipped.dot_underscore > 0 {
         left.push(format!("{} with a name that begins with \"._\" skipped", counted(skipped.dot_underscore, "file")));
@@ -151,6 +164,17 @@ fn missed(items: &[MissedItem], palette: Palette) -> String {
     text
 }
 
+/// A device that only changes the level misses every keep band: what to do about that.
+fn level_as_a_whole(spec: &Spec, outcome: &Outcome) -> String {
+    let gains = |item: &MissedItem| matches!(item.require, Some(Require::KeepDb(_)));
+    if !measured_pairs(outcome) || spec.reference_band.is_some() || !outcome.highlights.missed.iter().any(gains) {
+        return String::new();
+    }
+    let hint = "Where the device changes the level as a whole, reference_band in the spec names the band whose gain \
+                counts as 0 dB.";
+    wrapped(hint, 0, 0, WIDTH)
+}
+
 /// What was found and what had to be, with the report's own digits: 29.996 dB is
 /// not 30.
 fn shortfall(require: Option<Require>, row: &[MissedItem]) -> String {
@@ -182,7 +206,8 @@ fn failed(outcome: &Outcome, palette: Palette) -> String {
     if items.is_empty() {
         return String::new();
     }
-    let mut text = heading("Failed, nothing written for these", Style::Bad, palette);
+    let title = if measured_pairs(outcome) { "Failed" } else { "Failed, nothing written for these" };
+    let mut text = heading(title, Style::Bad, palette);
     for item in items {
         text.push_str(&wrapped(&format!("{}: {}", item.path, item.error), 2, 6, WIDTH));
     }
@@ -250,6 +275,7 @@ fn needed(code: Option<ReasonCode>, shortest_s: Option<f64>) -> String {
             "a louder signal in this band, or output in finer steps (encoding = \"pcm24\" or \"float32\")".to_owned()
         }
         Some(ReasonCode::LoudNeighbor) => "recordings with less sound just outside this band".to_owned(),
+        Some(ReasonCode::DeviceNoise) => "a quieter or steadier device, or a louder or longer excitation".to_owned(),
         Some(ReasonCode::OutOfRange) => "a band inside the range that the sample rate can carry".to_owned(),
         None => "see the report".to_owned(),
     }
@@ -316,6 +342,13 @@ fn closing(outcome: &Outcome, palette: Palette) -> String {
     let mut text = format!("Verdict: {} ({meaning})\n", palette.paint(Style::from(verdict), word));
     if let Some(path) = &outcome.report_path {
         text.push_str(&wrapped(&format!("Report: {}", path.display()), 0, 2, WIDTH));
+    }
+    if let Some(path) = &outcome.table_path {
+        text.push_str(&wrapped(&format!("Table: {}", path.display()), 0, 2, WIDTH));
+    }
+    if !outcome.package.is_empty() {
+        let files: Vec<_> = outcome.package.iter().map(|path| path.display().to_string()).collect();
+        text.push_str(&wrapped(&format!("Package: {}", files.join(", ")), 0, 2, WIDTH));
     }
     let note = "Levels are relative to full scale, not sound pressure; where a calibrated measurement is required, \
                 this report does not replace it.";

@@ -46,6 +46,8 @@ fn outcome(recordings: &[Recording], rates: &[u32]) -> Outcome {
         highlights,
         designs: rates.iter().map(|&rate_hz| design(rate_hz)).collect(),
         report_path: Some("quiet/bandproof-report.json".into()),
+        table_path: None,
+        package: Vec::new(),
         seconds: 12.4,
         bytes_read: 1_240_000_000,
         complete: true,

@@ -33,6 +33,27 @@ fn the_table_shows_stages_sections_and_bands() {
 }
 
 #[test]
+fn each_rate_has_its_sentence_for_a_methods_section() {
+    let text = stdout(bandproof().args(["design", &spec("quay.toml"), "--rate", "22050", "--rate", "96000"]));
+    let told: Vec<_> = text.split("For a methods section, once recordings are filtered with this\n").skip(1).collect();
+    assert_eq!(told.len(), 2, "{text}");
+    for (told, rate) in told.iter().zip(["22.05 kHz", "96 kHz"]) {
+        let sentence = told.split("\n\n").next().unwrap().replace('\n', " ");
+        let start =
+            format!("Recordings sampled at {rate} were filtered with bandproof {} in", env!("CARGO_PKG_VERSION"));
+        assert!(sentence.starts_with(&start), "{sentence}");
+        // At 22.05 kHz the notch at 14 kHz and the band around it are left out.
+        let high = rate == "96 kHz";
+        assert_eq!([sentence.contains("14000 Hz"), sentence.contains("beacon")], [high, high], "{sentence}");
+    }
+    let rates = ["--rate", "96000", "--json"];
+    let json = stdout(bandproof().args(["design", &spec("quay.toml")]).args(rates));
+    let json: Value = serde_json::from_str(&json).unwrap();
+    let printed = told[1].replace('\n', " ");
+    assert_eq!(json["designs"][0]["methods"]["sentence"].as_str().unwrap(), printed.trim_end());
+}
+
+#[test]
 fn no_line_is_wider_than_a_hundred_columns() {
     let text = stdout(bandproof().args(["design", &spec("quay.toml"), "--rate", "22050", "--rate", "384000"]));
     assert!(text.contains("At 22050 Hz") && text.contains("At 384000 Hz"));

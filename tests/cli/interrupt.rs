@@ -53,6 +53,8 @@ fn an_interrupted_run_reports_what_it_did_and_that_it_is_not_all() {
             input,
             output: output.clone(),
             report: None,
+            table: None,
+            emit: None,
             replace: false,
             include: Vec::new(),
             exclude: Vec::new(),
