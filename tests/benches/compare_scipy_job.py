@@ -9,7 +9,6 @@ only make a round slower. The program's time is the whole process; SciPy's leave
 the start of the interpreter and its imports.
 Build first: cargo build --release
 """
-import argparse
 import os
 import subprocess
 import sys
@@ -31,12 +30,7 @@ def run_scipy(source, target, jobs):
 
 
 def main():
-    parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
-    parser.add_argument("--files", type=int, default=16)
-    parser.add_argument("--seconds", type=float, default=60)
-    parser.add_argument("--rounds", type=int, default=5)
-    parser.add_argument("--tool", type=Path, default=timing.TOOL)
-    options = parser.parse_args()
+    options = timing.options(__doc__, files=16, seconds=60, rounds=5)
     with tempfile.TemporaryDirectory() as folder:
         folder = Path(folder)
         timing.make_recordings(folder / "in", options.files, options.seconds)

@@ -1,5 +1,6 @@
 """What the scripts that time the whole program share. Standard library only: a child's
 peak memory counts from its parent's at the fork, so the parent has to be small."""
+import argparse
 import os
 import shutil
 import subprocess
@@ -10,6 +11,16 @@ from pathlib import Path
 HERE = Path(__file__).resolve().parent
 SPEC = HERE / "speed.toml"
 TOOL = HERE.parents[1] / "target" / "release" / "bandproof"
+
+
+def options(doc, files, seconds, rounds):
+    """What every script takes: how many recordings, how long, how often, which program."""
+    parser = argparse.ArgumentParser(description=doc.splitlines()[0])
+    parser.add_argument("--files", type=int, default=files)
+    parser.add_argument("--seconds", type=float, default=seconds)
+    parser.add_argument("--rounds", type=int, default=rounds)
+    parser.add_argument("--tool", type=Path, default=TOOL)
+    return parser.parse_args()
 
 
 def make_recordings(folder, count, seconds):
