@@ -114,6 +114,7 @@ fn of_a_steady_tone_the_smallest_lag_is_taken_and_the_next_named() {
         let note = found.notes.first().unwrap();
         assert!(note.contains("ambiguous") && note.contains("--delay"), "{delay}: {note}");
         assert!(note.contains(rival) || delay == 0.0, "{delay}: {note}");
+        assert!(!found.certain, "{delay}: {found:?}");
     }
 }
 

@@ -14,6 +14,7 @@ pub struct Pair {
     pub rounding: f64,
     pub gain: f64,
     pub scatter_s: f64,
+    pub certain: bool,
     pub reaches_hz: f64,
     /// Segment length, frames.
     pub length: usize,
@@ -22,7 +23,7 @@ pub struct Pair {
 impl Pair {
     pub fn new(before: Vec<f64>, after: Vec<f64>, length: usize) -> Self {
         let reaches_hz = f64::from(RATE) / 2.0;
-        Pair { before, after, idle: None, rounding: 0.0, gain: 1.0, scatter_s: 0.0, reaches_hz, length }
+        Pair { before, after, idle: None, rounding: 0.0, gain: 1.0, scatter_s: 0.0, certain: true, reaches_hz, length }
     }
 
     /// `after` with `noise` on top.
@@ -62,7 +63,7 @@ impl Pair {
             pair: Some(Pairing {
                 noise,
                 delay_scatter_s: self.scatter_s,
-                delay_certain: true,
+                delay_certain: self.certain,
                 reaches_hz: self.reaches_hz,
             }),
         })

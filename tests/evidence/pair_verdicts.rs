@@ -241,6 +241,36 @@ fn a_clock_that_wanders_leaves_keep_bands_open_and_no_others() {
 }
 
 #[test]
+fn under_a_delay_that_is_not_certain_no_keep_band_is_missed() {
+    let x = Noise::new(53).white(frames(20.0), -20.0);
+    let halved = x.iter().map(|x| 0.5 * x).collect();
+    let mut pair = Pair::new(x, halved, LENGTH);
+    let bands = [keep(90.0, 3000.0, 0.5), keep(90.0, 3000.0, 7.0)];
+    expect(&pair.judge(&bands)[0], Verdict::Missed, None);
+    pair.certain = false;
+    let figures = pair.judge(&bands);
+    expect(&figures[0], Verdict::Unproven, Some(ReasonCode::DeviceNoise));
+    let reason = figures[0].reason.as_deref().unwrap();
+    assert!(reason.contains("-6.0") && reason.contains("--delay"), "{reason}");
+    // What is inside all the same is met.
+    expect(&figures[1], Verdict::Met, None);
+}
+
+/// Sound that comes and goes, held against another of its kind: the level has fallen in
+/// each sub-band, and nothing says that it is the device's doing.
+#[test]
+fn where_nothing_is_coherent_a_lower_level_is_no_miss() {
+    let (x, other) = (Noise::new(54).white(frames(60.0), -20.0), Noise::new(55).white(frames(60.0), -23.0));
+    expect(
+        &Pair::new(x.clone(), other, LENGTH).judge_one(&keep(90.0, 3000.0, 0.5)),
+        Verdict::Unproven,
+        Some(ReasonCode::DeviceNoise),
+    );
+    let faint = Noise::new(56).white(frames(60.0), -40.0);
+    expect(&Pair::new(x, faint, LENGTH).judge_one(&keep(90.0, 3000.0, 0.5)), Verdict::Missed, None);
+}
+
+#[test]
 fn what_interpolation_changes_is_not_judged() {
     let x = Noise::new(52).white(frames(20.0), -20.0);
     let mut pair = Pair::new(x.clone(), x, LENGTH);
