@@ -106,26 +106,23 @@ width_hz = 12
     assert!(measured["pair"]["design_deviation_db"].as_f64().unwrap().abs() < 0.005, "{}", measured["pair"]);
 }
 
-/// A sound that comes and goes, laid against itself half a second off: levels differ, and
-/// that proves nothing.
+/// A delay that was given and that the recordings do not bear out is refused, not judged by.
 #[test]
-fn a_wrong_delay_misses_no_keep_band() {
+fn a_delay_that_does_not_fit_is_refused() {
     let bench = Bench::new(SPEC);
-    let sound = Sound::new(RATE, 60.0, 7, straight);
-    let calls = |delay: f64| -> Vec<f64> {
-        let swell = |n: usize| 1.0 + 0.9 * ((n as f64 - delay) / 9000.0).sin();
-        sound.samples(-delay, 1.0, FRAMES).iter().enumerate().map(|(n, sample)| 0.5 * swell(n) * sample).collect()
-    };
-    bench.write("before.wav", &wav16(RATE, 1, &calls(0.0)));
-    bench.write("after.wav", &wav16(RATE, 1, &calls(0.0)[4000..]));
-    let verdict = |delay: f64| {
+    let before = before_and_after().0;
+    bench.write("before.wav", &wav16(RATE, 1, &before));
+    bench.write("after.wav", &wav16(RATE, 1, &before[4000..]));
+    let measured = |delay: i32| {
         let ran = bench.run(&format!("measure spec.toml before.wav after.wav --replace --delay {delay}"));
-        let report = bench.report_at("bandproof-report.json");
-        assert!(ran.status != 2, "{}", ran.stderr);
-        report["recordings"][0]["channels"][0]["bands"][1]["verdict"].clone()
+        (ran.status, bench.report_at("bandproof-report.json")["recordings"][0].clone())
     };
-    assert_eq!(verdict(-4000.0), "met");
-    assert_ne!(verdict(0.0), "missed");
+    let (_, right) = measured(-4000);
+    assert_eq!(right["channels"][0]["bands"][1]["verdict"], "met", "{right:#}");
+    let (status, wrong) = measured(0);
+    let error = wrong["error"].as_str().unwrap();
+    assert_eq!((status, &wrong["status"]), (3, &"failed".into()));
+    assert!(error.contains("match in 0 of") && error.contains("check --delay"), "{error}");
 }
 
 #[test]
