@@ -38,7 +38,7 @@ const PLAIN_ATTEMPTS: usize = 3;
 /// How far above its root mean square a peak must stand to be believed alone. Sounds of few
 /// tones resemble others of their kind: of 59 music-like pairs 15 were refused because the
 /// first peak above 7.5 was a wrong one.
-const SURE_RATIO: f64 = 30.0;
+pub(super) const SURE_RATIO: f64 = 30.0;
 
 /// Frames by which lags of two chunks may differ besides what clocks allow: a filter delays
 /// one sound more than another.

@@ -1,6 +1,7 @@
 //! Delay, clock and polarity from pairs of chunks.
 
 use super::correlator::NEEDED_RATIO;
+use super::finder::SURE_RATIO;
 use super::lags::{Relative, relative};
 use super::line::{Fit, Lag, Line, consensus, fit, median};
 use super::mean::{Extremum, Mean};
@@ -21,10 +22,6 @@ const NEEDED_ERRORS: f64 = 3.0;
 
 /// Lags without which there is no clock: two lie on a straight line whatever they are.
 const FEWEST_LAGS: usize = 3;
-
-/// A peak of the averaged cross-correlation that far above its root mean square needs no
-/// chunks to bear it out: no wrong one of 240 unrelated pairs and 59 of music came near.
-const CERTAIN_RATIO: f64 = 30.0;
 
 /// Frames by which it must move the lag over the whole overlap.
 const NEEDED_FRAMES: f64 = 1e-3;
@@ -107,7 +104,8 @@ pub(super) fn measure(search: &Search, pieces: &[Piece], chunk: usize, known: &K
     }
     let notes = notes::of(line.at_zero, &first, known.rival, given.is_some(), (matching, sounding));
     let ambiguous = notes.iter().any(|note| note.starts_with(AMBIGUOUS_DELAY));
-    let unsupported = 2 * matching < sounding && first.ratio < CERTAIN_RATIO;
+    // A peak that is believed alone needs no chunks to bear it out, as of a sweep.
+    let unsupported = 2 * matching < sounding && first.ratio < SURE_RATIO;
     let rate = f64::from(search.rate_hz);
     let scatter = state.scatter(pieces, line, stands_out);
     Ok(Alignment {
