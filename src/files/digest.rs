@@ -1,7 +1,7 @@
 //! SHA-256 of files, and of what is being written.
 
+use super::open;
 use sha2::{Digest as _, Sha256};
-use std::fs::File;
 use std::io::{self, Read, Write};
 use std::path::Path;
 
@@ -20,13 +20,20 @@ pub struct Digest {
 
 /// Reads a file to its end.
 pub fn of_file(path: &Path) -> io::Result<Digest> {
-    let (sha256, bytes) = of_reader(File::open(path)?, &mut vec![0; BUFFER_BYTES], &mut |_| ())?;
+    let (sha256, bytes) = of_reader(open::regular(path)?, &mut vec![0; BUFFER_BYTES], &mut |_| Ok(()))?;
     Ok(Digest { sha256: hexadecimal(&sha256), bytes })
 }
 
 /// SHA-256 and length of what is left in `file`, read in blocks of `buffer`; `read` hears
-/// of each how long it is.
-pub fn of_reader(mut file: impl Read, buffer: &mut [u8], read: &mut dyn FnMut(u64)) -> io::Result<([u8; 32], u64)> {
+/// of each how long it is, and may give up.
+///
+/// # Errors
+/// What the system says, and what `read` does.
+pub fn of_reader(
+    mut file: impl Read,
+    buffer: &mut [u8],
+    read: &mut dyn FnMut(u64) -> io::Result<()>,
+) -> io::Result<([u8; 32], u64)> {
     let mut hasher = Sha256::new();
     let mut bytes = 0;
     loop {
@@ -35,7 +42,7 @@ pub fn of_reader(mut file: impl Read, buffer: &mut [u8], read: &mut dyn FnMut(u6
             Ok(count) => {
                 hasher.update(buffer.get(..count).unwrap_or_default());
                 bytes += count as u64;
-                read(count as u64);
+                read(count as u64)?;
             }
             Err(error) if error.kind() == io::ErrorKind::Interrupted => {}
             Err(error) => return Err(error),
@@ -46,6 +53,18 @@ pub fn of_reader(mut file: impl Read, buffer: &mut [u8], read: &mut dyn FnMut(u6
 /// Lower-case hexadecimal.
 pub fn hexadecimal(bytes: &[u8]) -> String {
     bytes.iter().map(|byte| format!("{byte:02x}")).collect()
+}
+
+/// The bytes of a SHA-256 in hexadecimal; `None` for what is none.
+pub fn of_hexadecimal(text: &str) -> Option<[u8; 32]> {
+    let mut bytes = [0; 32];
+    if text.len() != 2 * bytes.len() {
+        return None;
+    }
+    for (byte, digits) in bytes.iter_mut().zip(text.as_bytes().as_chunks::<2>().0) {
+        *byte = u8::from_str_radix(std::str::from_utf8(digits).ok()?, 16).ok()?;
+    }
+    Some(bytes)
 }
 
 /// Passes bytes on and hashes those that were taken.

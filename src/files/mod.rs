@@ -3,6 +3,10 @@
 //!
 //! Knows nothing of what is in them.
 
+pub mod comparing;
 pub mod digest;
+pub mod leftover;
+pub mod lock;
+pub mod open;
 pub mod place;
 pub mod temporary;

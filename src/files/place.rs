@@ -1,6 +1,10 @@
 //! Where files really are, and which are the same.
 
+use std::collections::HashMap;
+use std::fs::Metadata;
+use std::io;
 use std::path::{Component, Path, PathBuf};
+use std::time::SystemTime;
 
 /// The folder `file` lies in, as given.
 pub fn folder_of(file: &Path) -> &Path {
@@ -22,6 +26,31 @@ pub fn real(path: &Path) -> PathBuf {
     whole
 }
 
+/// Where files of many folders really are; each folder is looked up once.
+#[derive(Debug, Default)]
+pub struct Places {
+    folders: HashMap<PathBuf, PathBuf>,
+}
+
+impl Places {
+    /// Where a file that is put at `path` would be: links to its folder are resolved, one in
+    /// its own place is not, because a new file takes that.
+    pub fn of(&mut self, path: &Path) -> PathBuf {
+        match path.file_name() {
+            Some(name) => self.of_folder(folder_of(path)).join(name),
+            None => real(path),
+        }
+    }
+
+    /// Where `folder` is, as [`real`] says.
+    pub fn of_folder(&mut self, folder: &Path) -> &Path {
+        if !self.folders.contains_key(folder) {
+            self.folders.insert(folder.to_path_buf(), real(folder));
+        }
+        self.folders.get(folder).map_or(Path::new(""), PathBuf::as_path)
+    }
+}
+
 /// A file by device and inode: the same for every hard link.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub struct Identity(u64, u64);
@@ -30,16 +59,39 @@ impl Identity {
     /// The identity of the file at `path`; `None` where the system has none or there is no
     /// file.
     pub fn of(path: &Path) -> Option<Self> {
-        #[cfg(unix)]
-        {
-            use std::os::unix::fs::MetadataExt;
-            path.metadata().ok().map(|metadata| Identity(metadata.dev(), metadata.ino()))
-        }
-        #[cfg(not(unix))]
-        {
-            _ = path;
-            None
-        }
+        Self::of_metadata(path.metadata())
+    }
+
+    /// The same for what stands at `path` itself, which may be a link.
+    pub fn of_entry(path: &Path) -> Option<Self> {
+        Self::of_metadata(path.symlink_metadata())
+    }
+
+    #[cfg(unix)]
+    fn of_metadata(metadata: io::Result<Metadata>) -> Option<Self> {
+        use std::os::unix::fs::MetadataExt;
+        metadata.ok().map(|metadata| Identity(metadata.dev(), metadata.ino()))
+    }
+
+    #[cfg(not(unix))]
+    fn of_metadata(_: io::Result<Metadata>) -> Option<Self> {
+        None
+    }
+}
+
+/// What a file looks like from outside: another one if it was written to or replaced.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Stamp {
+    identity: Option<Identity>,
+    bytes: u64,
+    modified: Option<SystemTime>,
+}
+
+impl Stamp {
+    /// Of the file at `path`; `None` where there is none.
+    pub fn of(path: &Path) -> Option<Self> {
+        let metadata = path.metadata().ok()?;
+        Some(Stamp { identity: Identity::of(path), bytes: metadata.len(), modified: metadata.modified().ok() })
     }
 }
 

@@ -44,7 +44,11 @@ fn builder() -> Builder<'static, 'static> {
 }
 
 fn begin(builder: &Builder<'_, '_>, target: &Path) -> io::Result<NamedTempFile> {
-    builder.tempfile_in(super::place::folder_of(target)).map_err(without_name)
+    let file = builder.tempfile_in(super::place::folder_of(target)).map_err(without_name)?;
+    // Held until the file has its name: another run takes away only what nobody holds. A
+    // file system without locks has none to respect.
+    _ = file.as_file().try_lock();
+    Ok(file)
 }
 
 /// Gives a finished file its name, in the place of another only where `replace` says so.
@@ -56,9 +60,17 @@ pub fn settle(file: NamedTempFile, target: &Path, replace: bool) -> io::Result<(
     settled.map(drop).map_err(|error| error.error)
 }
 
+/// Whether a name is one of those a run gives its own files at the top of an output folder
+/// (the journal), which are gone when the run has ended.
+pub fn is_run_name(name: &[u8]) -> bool {
+    name == JOURNAL_NAME.as_bytes()
+}
+
 /// Whether a name is one that this program gives files while they are written.
 pub fn is_temporary_name(name: &[u8]) -> bool {
-    name.starts_with(PREFIX.as_bytes()) && name.ends_with(SUFFIX.as_bytes())
+    let middle = name.strip_prefix(PREFIX.as_bytes()).and_then(|rest| rest.strip_suffix(SUFFIX.as_bytes()));
+    // Letters and digits, as many as tempfile makes unless told otherwise.
+    middle.is_some_and(|middle| middle.len() == 6 && middle.iter().all(u8::is_ascii_alphanumeric))
 }
 
 /// What is wrong with the place of a temporary file, without that file's name.
