@@ -2,7 +2,8 @@
 //!
 //! One loop an encoding, with the channel count known at compile time for one and
 //! two channels, over exact chunks, so that the compiler can vectorize them.
-//! Scaling is by powers of two: exact both ways.
+//! Scaling is by powers of two: exact both ways. Big-endian samples are the
+//! little-endian ones with their bytes reversed, which compiles to a byte swap.
 
 use super::Encoding;
 
@@ -85,15 +86,35 @@ impl Sample<8> for Float64 {
     }
 }
 
+/// The same sample in the other byte order.
+struct Big<S>(std::marker::PhantomData<S>);
+
+impl<const N: usize, S: Sample<N>> Sample<N> for Big<S> {
+    fn decode(mut bytes: [u8; N]) -> f64 {
+        bytes.reverse();
+        S::decode(bytes)
+    }
+    fn encode(value: f64) -> [u8; N] {
+        let mut bytes = S::encode(value);
+        bytes.reverse();
+        bytes
+    }
+}
+
 /// Appends the whole frames in `bytes` to the planes, one a channel.
-pub(crate) fn decode(encoding: Encoding, bytes: &[u8], planes: &mut [Vec<f64>]) {
-    match encoding {
-        Encoding::Pcm8 => decode_as::<1, Pcm8>(bytes, planes),
-        Encoding::Pcm16 => decode_as::<2, Pcm16>(bytes, planes),
-        Encoding::Pcm24 => decode_as::<3, Pcm24>(bytes, planes),
-        Encoding::Pcm32 => decode_as::<4, Pcm32>(bytes, planes),
-        Encoding::Float32 => decode_as::<4, Float32>(bytes, planes),
-        Encoding::Float64 => decode_as::<8, Float64>(bytes, planes),
+pub(crate) fn decode(encoding: Encoding, big_endian: bool, bytes: &[u8], planes: &mut [Vec<f64>]) {
+    match (encoding, big_endian) {
+        (Encoding::Pcm8, _) => decode_as::<1, Pcm8>(bytes, planes),
+        (Encoding::Pcm16, false) => decode_as::<2, Pcm16>(bytes, planes),
+        (Encoding::Pcm24, false) => decode_as::<3, Pcm24>(bytes, planes),
+        (Encoding::Pcm32, false) => decode_as::<4, Pcm32>(bytes, planes),
+        (Encoding::Float32, false) => decode_as::<4, Float32>(bytes, planes),
+        (Encoding::Float64, false) => decode_as::<8, Float64>(bytes, planes),
+        (Encoding::Pcm16, true) => decode_as::<2, Big<Pcm16>>(bytes, planes),
+        (Encoding::Pcm24, true) => decode_as::<3, Big<Pcm24>>(bytes, planes),
+        (Encoding::Pcm32, true) => decode_as::<4, Big<Pcm32>>(bytes, planes),
+        (Encoding::Float32, true) => decode_as::<4, Big<Float32>>(bytes, planes),
+        (Encoding::Float64, true) => decode_as::<8, Big<Float64>>(bytes, planes),
     }
 }
 
@@ -116,14 +137,26 @@ fn decode_as<const N: usize, S: Sample<N>>(bytes: &[u8], planes: &mut [Vec<f64>]
 }
 
 /// Writes frames `from..to` of the planes into `bytes`, which holds exactly them.
-pub(crate) fn encode(encoding: Encoding, planes: &[Vec<f64>], from: usize, to: usize, bytes: &mut [u8]) {
-    match encoding {
-        Encoding::Pcm8 => encode_as::<1, Pcm8>(planes, from, to, bytes),
-        Encoding::Pcm16 => encode_as::<2, Pcm16>(planes, from, to, bytes),
-        Encoding::Pcm24 => encode_as::<3, Pcm24>(planes, from, to, bytes),
-        Encoding::Pcm32 => encode_as::<4, Pcm32>(planes, from, to, bytes),
-        Encoding::Float32 => encode_as::<4, Float32>(planes, from, to, bytes),
-        Encoding::Float64 => encode_as::<8, Float64>(planes, from, to, bytes),
+pub(crate) fn encode(
+    encoding: Encoding,
+    big_endian: bool,
+    planes: &[Vec<f64>],
+    from: usize,
+    to: usize,
+    bytes: &mut [u8],
+) {
+    match (encoding, big_endian) {
+        (Encoding::Pcm8, _) => encode_as::<1, Pcm8>(planes, from, to, bytes),
+        (Encoding::Pcm16, false) => encode_as::<2, Pcm16>(planes, from, to, bytes),
+        (Encoding::Pcm24, false) => encode_as::<3, Pcm24>(planes, from, to, bytes),
+        (Encoding::Pcm32, false) => encode_as::<4, Pcm32>(planes, from, to, bytes),
+        (Encoding::Float32, false) => encode_as::<4, Float32>(planes, from, to, bytes),
+        (Encoding::Float64, false) => encode_as::<8, Float64>(planes, from, to, bytes),
+        (Encoding::Pcm16, true) => encode_as::<2, Big<Pcm16>>(planes, from, to, bytes),
+        (Encoding::Pcm24, true) => encode_as::<3, Big<Pcm24>>(planes, from, to, bytes),
+        (Encoding::Pcm32, true) => encode_as::<4, Big<Pcm32>>(planes, from, to, bytes),
+        (Encoding::Float32, true) => encode_as::<4, Big<Float32>>(planes, from, to, bytes),
+        (Encoding::Float64, true) => encode_as::<8, Big<Float64>>(planes, from, to, bytes),
     }
 }
 

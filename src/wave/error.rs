@@ -47,7 +47,7 @@ pub enum WaveError {
         /// The form type.
         found: String,
     },
-    /// A relative of RIFF/WAVE this version does not read.
+    /// A relative of RIFF/WAVE that is not read.
     #[error("byte 0: {form} files ({meaning}) are not read; convert the recording to plain RIFF/WAVE")]
     OtherForm {
         /// Its four letters.
@@ -61,20 +61,57 @@ pub enum WaveError {
         /// Where it was met.
         offset: u64,
         /// The arrangement by name.
-        what: &'static str,
+        what: String,
         /// What to do.
-        repair: &'static str,
+        repair: String,
     },
     /// Where a chunk should begin there is no chunk id.
     #[error(
         "byte {offset}: found {found} where a chunk before `data` should begin, expected four printable characters; \
-         the size of the chunk before it is wrong, or the file is damaged: export the recording again"
+         {before}, or the file is damaged: export the recording again"
     )]
     BadChunkId {
         /// Where.
         offset: u64,
         /// The four bytes.
         found: String,
+        /// What led there.
+        before: String,
+    },
+    /// An RF64 or BW64 file whose 64-bit sizes are not where they belong.
+    #[error(
+        "byte {offset}: {found}, expected a `ds64` chunk of at least 28 bytes right after `WAVE` with the 64-bit sizes \
+         of this {form} file; copy the recording again from the recorder's card, or export it again"
+    )]
+    Ds64 {
+        /// Where.
+        offset: u64,
+        /// What was found.
+        found: String,
+        /// `RF64` or `BW64`.
+        form: &'static str,
+    },
+    /// Bytes between the end of `data` and the chunks after it.
+    #[error(
+        "byte {offset}: {bytes} bytes that are no chunk stand between the end of `data` (byte {data}, declared {declared} \
+         bytes) and {next}, expected a chunk; if they are samples, the size at byte {size_offset} should be {right}, \
+         else take them out"
+    )]
+    Gap {
+        /// Where they begin.
+        offset: u64,
+        /// How many.
+        bytes: u64,
+        /// Where the id of `data` stands.
+        data: u64,
+        /// What it declares.
+        declared: u64,
+        /// The chunk after them, with its place.
+        next: String,
+        /// Where the size of `data` stands.
+        size_offset: u64,
+        /// What it should be then.
+        right: u64,
     },
     /// More chunks than any recorder writes.
     #[error(
@@ -88,8 +125,8 @@ pub enum WaveError {
     },
     /// `data` without a `fmt `.
     #[error(
-        "byte {offset}: `data` without a `fmt ` chunk, expected `fmt ` before it to say how samples are stored; \
-         export the recording again"
+        "byte {offset}: `data` without a `fmt ` chunk before it, nor one after it where its size ends; expected one to \
+         say how samples are stored; export the recording again"
     )]
     MissingFmt {
         /// Where `data` stands.
@@ -209,13 +246,21 @@ pub enum WaveError {
         /// How many there are.
         expected: u64,
     },
-    /// The output would not fit into the 32-bit sizes of a RIFF file.
+    /// A big-endian output would not fit into 32-bit sizes.
     #[error(
-        "the output would take {bytes} bytes, expected at most 4294967303 (32-bit sizes); \
-         choose a narrower `encoding`, or split the recording"
+        "the output would take {bytes} bytes, expected at most {limit}: RIFX files have 32-bit sizes and no form with \
+         64; choose a narrower `encoding`, split the recording, or convert it to little-endian RIFF"
     )]
     TooLong {
         /// Its length.
+        bytes: u64,
+        /// What 32-bit sizes allow.
+        limit: u64,
+    },
+    /// A chunk written anew would not fit into its 32-bit size.
+    #[error("a chunk of the output would take {bytes} bytes, expected at most 4294967294 (32-bit size); shorten it")]
+    ChunkTooLong {
+        /// Bytes of its body.
         bytes: u64,
     },
     /// A frame of the output would not fit into the 16-bit block align.
@@ -224,8 +269,84 @@ pub enum WaveError {
         /// Bytes of a frame.
         bytes: u64,
     },
+    /// GUANO says that the recording is time-expanded, and nobody said which rate
+    /// frequencies mean.
+    #[error(
+        "byte {offset}: `guan` says that the recording is time-expanded ({told}): the header's rate is {header_rate_hz} \
+         Hz, the acoustic rate {acoustic}; write rate = \"acoustic\" at the top of the spec if its frequencies mean \
+         the sound itself, or rate = \"header\" if they mean the recording as it plays"
+    )]
+    TimeExpanded {
+        /// Where the id of `guan` stands.
+        offset: u64,
+        /// The fields that tell it.
+        told: String,
+        /// Hz.
+        header_rate_hz: u32,
+        /// The rate at which sound was sampled, with its unit; both where the fields disagree.
+        acoustic: String,
+    },
+    /// A GUANO field that decides on the sample rate has no number above 0.
+    #[error(
+        "byte {offset}: `{key}` in `guan` is {found}, expected a number above 0: it can't be told whether the recording \
+         is time-expanded; correct the field, or write rate = \"header\" at the top of the spec if its frequencies mean \
+         the recording as it plays"
+    )]
+    RateField {
+        /// Where its line begins.
+        offset: u64,
+        /// `TE` or `Samplerate`.
+        key: &'static str,
+        /// What it has.
+        found: String,
+    },
+    /// The header's rate, `TE` and `Samplerate` can't all be right.
+    #[error(
+        "byte {offset}: `guan` contradicts itself: the header's rate of {header_rate_hz} Hz times a TE of {expansion} is \
+         {product_hz} Hz, and Samplerate says {told_hz}; correct the wrong field, or write rate = \"header\" at the top \
+         of the spec if its frequencies mean the recording as it plays"
+    )]
+    RatesDisagree {
+        /// Where the id of `guan` stands.
+        offset: u64,
+        /// Hz.
+        header_rate_hz: u32,
+        /// `TE`.
+        expansion: f64,
+        /// What both come to, Hz.
+        product_hz: f64,
+        /// `Samplerate`, Hz.
+        told_hz: f64,
+    },
+    /// The acoustic rate is none that a recording can have.
+    #[error(
+        "byte {offset}: by `guan` ({told}) and the header's rate of {header_rate_hz} Hz the acoustic rate is \
+         {acoustic_hz} Hz, expected a whole number from 1 to 4294967295; correct the field, or write rate = \"header\" \
+         at the top of the spec if its frequencies mean the recording as it plays"
+    )]
+    AcousticRate {
+        /// Where the id of `guan` stands.
+        offset: u64,
+        /// The fields that tell it.
+        told: String,
+        /// Hz.
+        header_rate_hz: u32,
+        /// Hz.
+        acoustic_hz: f64,
+    },
+    /// Damage of several kinds at once: what was written is not what would be read.
+    #[error(
+        "byte {offset}: the sizes around `data` contradict each other so that the output would not be read as it was \
+         written: {found}; set the sizes of the recording right, or export it again"
+    )]
+    NotReadBack {
+        /// Where the id of `data` stands.
+        offset: u64,
+        /// What would be read.
+        found: String,
+    },
     /// The operating system refused.
-    #[error("byte {offset}: {doing}: {source}")]
+    #[error("byte {offset}: {doing}: {source}{}", advice(source))]
     Io {
         /// What was being done.
         doing: &'static str,
@@ -234,6 +355,15 @@ pub enum WaveError {
         /// What the system said.
         source: io::Error,
     },
+}
+
+/// What to do about an error of the system, where that is known.
+fn advice(error: &io::Error) -> &'static str {
+    match error.kind() {
+        io::ErrorKind::StorageFull | io::ErrorKind::QuotaExceeded => "; make room there and run again",
+        io::ErrorKind::FileTooLarge => "; raise the limit on the size of files and run again",
+        _ => "",
+    }
 }
 
 /// Bytes as a reader of a message would like to see them: in backticks when they are

@@ -1,7 +1,7 @@
 //! The `fmt ` chunk: what it says about samples, and the same chunk for another format.
 
 use super::error::WaveError;
-use super::{Encoding, SampleFormat, hex};
+use super::{Encoding, Form, SampleFormat, hex};
 
 const TAG_PCM: u16 = 1;
 const TAG_FLOAT: u16 = 3;
@@ -13,6 +13,12 @@ pub(crate) const FMT_READ_BYTES: usize = 40;
 /// What follows the tag in a sub-format GUID made from a format tag
 /// ("Multiple Channel Audio Data and WAVE Files", Microsoft).
 const GUID_TAIL: [u8; 14] = [0, 0, 0, 0, 0x10, 0, 0x80, 0, 0, 0xaa, 0, 0x38, 0x9b, 0x71];
+
+/// Where the numbers of `fmt ` begin and how many bytes each takes.
+const FIELDS: [(usize, usize); 9] = [(0, 2), (2, 2), (4, 4), (8, 4), (12, 2), (14, 2), (16, 2), (18, 2), (20, 4)];
+
+/// The three numbers a GUID begins with; its last eight bytes are bytes.
+const GUID_FIELDS: [(usize, usize); 3] = [(24, 4), (28, 2), (30, 2)];
 
 /// What `fmt ` says.
 #[derive(Clone, Debug, PartialEq)]
@@ -76,6 +82,25 @@ fn u32_at(bytes: &[u8], at: usize) -> u32 {
     u32::from(u16_at(bytes, at)) | u32::from(u16_at(bytes, at + 2)) << 16
 }
 
+/// The body of `fmt ` in the other byte order, the GUID of the extensible form too if
+/// `guid`. Doing it twice gives back the first.
+fn swapped(body: &[u8], guid: bool) -> Vec<u8> {
+    let mut body = body.to_vec();
+    let guid_fields = if guid { &GUID_FIELDS[..] } else { &[] };
+    for &(at, bytes) in FIELDS.iter().chain(guid_fields) {
+        if let Some(field) = body.get_mut(at..at + bytes) {
+            field.reverse();
+        }
+    }
+    body
+}
+
+/// Whether the GUID of a big-endian body is big-endian too. Both are met (common
+/// practice, no source), and the 0x0010 at its byte 6 tells them apart.
+fn big_endian_guid(body: &[u8]) -> bool {
+    body.get(30..32) != Some(&GUID_TAIL[4..6])
+}
+
 /// Names of codings by format tag, from the multimedia registry of RFC 2361.
 fn coding_name(tag: u16) -> String {
     let name = match tag {
@@ -97,7 +122,10 @@ fn coding_name(tag: u16) -> String {
 
 /// Reads the body of `fmt `, whose id stands at `offset` and which holds `bytes`
 /// bytes; `body` are the first [`FMT_READ_BYTES`] of them, or all.
-pub(crate) fn parse(body: &[u8], bytes: u64, offset: u64) -> Result<Fmt, WaveError> {
+pub(crate) fn parse(body: &[u8], bytes: u64, offset: u64, form: Form) -> Result<Fmt, WaveError> {
+    if form.is_big_endian() {
+        return parse(&swapped(body, big_endian_guid(body)), bytes, offset, Form::Riff);
+    }
     // Tag, channels, rate, byte rate, block align, bits: 16 bytes.
     if body.len() < 16 {
         return Err(WaveError::FmtShort { offset, found: bytes, expected: 16, what: "the plain form" });
@@ -254,7 +282,11 @@ fn container_bytes(fields: Fields, float: bool, offset: u64, notes: &mut Vec<Str
 /// plain 16-byte body gets the 2-byte extension size that the RIFF rules ask for
 /// with any coding but PCM, and an empty extension goes again where PCM needs none:
 /// some readers refuse it there with more than 16 bits.
-pub(crate) fn rewrite(body: &[u8], channels: u16, rate_hz: u32, format: SampleFormat) -> Vec<u8> {
+pub(crate) fn rewrite(body: &[u8], channels: u16, rate_hz: u32, format: SampleFormat, form: Form) -> Vec<u8> {
+    if form.is_big_endian() {
+        let guid = big_endian_guid(body);
+        return swapped(&rewrite(&swapped(body, guid), channels, rate_hz, format, Form::Riff), guid);
+    }
     let mut new = body.to_vec();
     let extensible = u16_at(body, 0) == TAG_EXTENSIBLE;
     let tag = if format.encoding.is_float() { TAG_FLOAT } else { TAG_PCM };

@@ -2,10 +2,22 @@
 
 use std::io::{Read, Seek};
 
-use super::chunks::Layout;
+use super::chunks::{Layout, Span};
 use super::error::WaveError;
+use super::form::ELSEWHERE;
 use super::reader::Reader;
-use super::{Header, SampleFormat, format};
+use super::sizes::{self, Lengths};
+use super::{Changes, Header, format, history};
+
+/// A chunk of the input that gets another body. Its id stays, its size and padding
+/// follow, and it no longer counts as kept.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub(crate) struct Edit {
+    /// Which chunk, in file order; never `data`.
+    pub index: usize,
+    /// The new body, without padding.
+    pub body: Vec<u8>,
+}
 
 /// One piece of the output outside the samples.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -16,13 +28,12 @@ pub(crate) enum Piece {
     Bytes(Vec<u8>),
 }
 
-impl Piece {
-    fn bytes(&self) -> u64 {
-        match self {
-            Piece::Copy { from, to } => to - from,
-            Piece::Bytes(bytes) => bytes.len() as u64,
-        }
-    }
+/// Bytes of the input, `from..to`, that others take the place of.
+#[derive(Clone, Debug, PartialEq, Eq)]
+pub(crate) struct Splice {
+    from: u64,
+    to: u64,
+    bytes: Vec<u8>,
 }
 
 /// What stands before and after the samples.
@@ -30,7 +41,6 @@ impl Piece {
 pub(crate) struct Plan {
     pub(crate) head: Vec<Piece>,
     pub(crate) tail: Vec<Piece>,
-    pub(crate) data_bytes: u64,
     /// Whether `data` as a whole (its size, and what is left after its last frame)
     /// would be the input's if the samples were.
     pub(crate) data_frame_kept: bool,
@@ -39,110 +49,173 @@ pub(crate) struct Plan {
     pub(crate) notes: Vec<String>,
 }
 
-impl Plan {
-    fn total(&self) -> u64 {
-        self.head.iter().chain(&self.tail).map(Piece::bytes).sum::<u64>() + self.data_bytes
+/// Changes gathered chunk by chunk.
+#[derive(Debug)]
+pub(crate) struct Draft<'a> {
+    pub(crate) layout: &'a Layout,
+    splices: Vec<Splice>,
+    pub(crate) rewritten: Vec<usize>,
+    pub(crate) notes: Vec<String>,
+}
+
+impl Draft<'_> {
+    pub(crate) fn splice(&mut self, from: u64, to: u64, bytes: Vec<u8>) {
+        self.splices.push(Splice { from, to, bytes });
+    }
+
+    /// Puts as many bytes in place of those from `at` on.
+    pub(crate) fn overwrite(&mut self, at: u64, bytes: &[u8]) {
+        self.splice(at, at + bytes.len() as u64, bytes.to_vec());
+    }
+
+    pub(crate) fn size_field(&self, bytes: u64) -> Result<[u8; 4], WaveError> {
+        match u32::try_from(bytes) {
+            Ok(size) if size != ELSEWHERE => Ok(self.layout.sizes.form.write_u32(size)),
+            _ => Err(WaveError::ChunkTooLong { bytes }),
+        }
+    }
+
+    /// A size field, a body and, after an odd one, a zero pad byte.
+    fn sized(&self, body: &[u8]) -> Result<Vec<u8>, WaveError> {
+        let pad = vec![0; body.len() % 2];
+        Ok([&self.size_field(body.len() as u64)?[..], body, &pad].concat())
+    }
+
+    fn edit(&mut self, edit: &Edit) -> Result<(), WaveError> {
+        let Some(&span) = self.layout.spans.get(edit.index) else { return Ok(()) };
+        if span.entry.is_some() {
+            let pad = vec![0; edit.body.len() % 2];
+            self.splice(span.body(), span.next, [&edit.body[..], &pad].concat());
+            self.resize(&span, edit.body.len() as u64)?;
+        } else {
+            self.splice(span.offset + 4, span.next, self.sized(&edit.body)?);
+        }
+        self.rewritten.push(edit.index);
+        Ok(())
+    }
+
+    /// Writes the size of a chunk where the input has it.
+    fn resize(&mut self, span: &Span, bytes: u64) -> Result<(), WaveError> {
+        let ds64 = self.layout.sizes.ds64.as_ref();
+        match span.entry.and_then(|k| ds64?.entries.get(k)) {
+            Some(entry) => {
+                self.overwrite(entry.offset, &bytes.to_le_bytes());
+                self.rewritten.push(0);
+            }
+            None => self.overwrite(span.offset + 4, &self.size_field(bytes)?),
+        }
+        Ok(())
+    }
+
+    /// Bytes by which the output is longer outside the samples, and shorter.
+    pub(super) fn growth(&self) -> (u64, u64) {
+        let come = self.splices.iter().map(|splice| splice.bytes.len() as u64).sum();
+        let gone = self.splices.iter().map(|splice| splice.to - splice.from).sum();
+        (come, gone)
     }
 }
 
-/// A chunk with its header and, for an odd body, a zero pad byte.
-fn chunk(id: &[u8; 4], body: &[u8]) -> Vec<u8> {
-    // Bodies written here are at most the 65535 bytes of a `fmt `.
-    let mut bytes = [&id[..], &(body.len() as u32).to_le_bytes(), body].concat();
-    if body.len() % 2 == 1 {
-        bytes.push(0);
-    }
-    bytes
-}
-
-/// Decides every byte outside the samples. An unchanged layout is copied whole;
-/// otherwise `fmt `, `fact` and sizes are written anew and all else is copied.
-pub(crate) fn plan<R: Read + Seek>(input: &Reader<R>, format: SampleFormat) -> Result<Plan, WaveError> {
+/// Decides every byte outside the samples: what stays is copied, what changes is
+/// spliced in.
+pub(crate) fn plan<R: Read + Seek>(input: &mut Reader<R>, changes: &Changes) -> Result<Plan, WaveError> {
+    let history = history::edits(input, changes)?;
     let layout = input.layout();
     let header = input.header();
+    let format = changes.format;
     let data = layout.spans[layout.data];
     let samples_end = header.data_offset + header.data_bytes;
     let same_format = format == header.format;
-    let same_layout = same_format && !layout.data_size_wrong;
-    let mut plan = Plan {
-        head: Vec::new(),
-        tail: Vec::new(),
-        data_bytes: header.data_bytes,
-        data_frame_kept: same_layout,
-        rewritten: Vec::new(),
-        notes: Vec::new(),
-    };
-    if same_layout {
-        plan.tail.push(Piece::Copy { from: samples_end, to: header.file_bytes });
-        if !layout.riff_size_wrong {
-            plan.head.push(Piece::Copy { from: 0, to: header.data_offset });
-            return Ok(plan);
-        }
-        plan.head.push(Piece::Copy { from: 12, to: header.data_offset });
-    } else {
+    let same_data = same_format && !data.size_wrong;
+    let mut draft = Draft { layout, splices: Vec::new(), rewritten: Vec::new(), notes: Vec::new() };
+    let (mut samples_bytes, mut body_bytes) = (header.data_bytes, data.bytes);
+    if !same_data {
         let frame_bytes = u64::from(header.channels) * u64::from(format.encoding.bytes());
         if frame_bytes > u64::from(u16::MAX) {
             return Err(WaveError::FrameTooWide { bytes: frame_bytes });
         }
-        plan.data_bytes = header.frames * frame_bytes;
-        head_pieces(header, layout, format, &mut plan);
-        plan.head.push(Piece::Bytes([b"data", &size_field(plan.data_bytes)?[..]].concat()));
-        if plan.data_bytes % 2 == 1 {
-            plan.tail.push(Piece::Bytes(vec![0]));
-        }
-        plan.tail.push(Piece::Copy { from: data.next, to: header.file_bytes });
-        if !same_format && !layout.data_size_wrong && data.bytes > header.data_bytes {
-            plan.notes.push(format!(
+        samples_bytes = header.frames * frame_bytes;
+        body_bytes = samples_bytes;
+        draft.splice(samples_end, data.next, vec![0; (body_bytes % 2) as usize]);
+        if !same_format && !data.size_wrong && data.bytes > header.data_bytes {
+            draft.notes.push(format!(
                 "{} bytes after the last whole frame were left out with the change of encoding",
                 data.bytes - header.data_bytes
             ));
         }
+        coding(&mut draft, header, changes)?;
     }
-    // Bytes that trail the last chunk are outside the RIFF.
-    let riff_bytes = 4 + plan.total() - layout.trailing_bytes;
-    let riff = [b"RIFF", &size_field(riff_bytes)?[..], b"WAVE"].concat();
-    plan.head.insert(0, Piece::Bytes(riff));
-    Ok(plan)
-}
-
-fn size_field(bytes: u64) -> Result<[u8; 4], WaveError> {
-    // 0xffffffff is what unfinished files and 64-bit relatives write.
-    match u32::try_from(bytes) {
-        Ok(size) if size != u32::MAX => Ok(size.to_le_bytes()),
-        _ => Err(WaveError::TooLong { bytes: bytes.saturating_add(8) }),
+    for edit in &history.edits {
+        draft.edit(edit)?;
     }
-}
-
-/// Everything between the RIFF header and `data`. Float samples need a `fact` chunk
-/// with their number (Multimedia Programming Interface and Data Specifications 1.0,
-/// 1991: required for any coding but PCM); one that is there is set right.
-fn head_pieces(input: &Header, layout: &Layout, format: SampleFormat, plan: &mut Plan) {
-    let data = layout.spans[layout.data];
-    // A count beyond 32 bits would need a file beyond 32-bit sizes.
-    let count = u32::try_from(input.frames).unwrap_or(u32::MAX).to_le_bytes();
-    let mut copied = 12;
-    for (index, span) in layout.spans[..layout.data].iter().enumerate() {
-        if index == layout.fmt && format != input.format {
-            plan.head.push(Piece::Copy { from: copied, to: span.offset });
-            let body = format::rewrite(&layout.fmt_body, input.channels, input.rate_hz, format);
-            plan.head.push(Piece::Bytes(chunk(b"fmt ", &body)));
-            copied = span.next;
-            plan.rewritten.push(index);
-            plan.notes.push(format!("`fmt ` was rewritten for {}", format.encoding.name()));
-            if format.encoding.is_float() && layout.fact.is_none() {
-                plan.head.push(Piece::Bytes(chunk(b"fact", &count)));
-                plan.notes.push("a `fact` chunk was added after `fmt `, as float samples require one".into());
-            }
-        } else if let Some((fact, declared)) = layout.fact
-            && fact == index
-            && declared.to_le_bytes() != count
-        {
-            plan.head.push(Piece::Copy { from: copied, to: span.body() });
-            plan.head.push(Piece::Bytes(count.to_vec()));
-            copied = span.body() + 4;
-            plan.rewritten.push(index);
-            plan.notes.push(format!("`fact` was corrected from {declared} to {} frames", input.frames));
+    draft.notes.extend(history.notes);
+    for (index, span) in layout.spans.iter().enumerate() {
+        if span.size_wrong && index != layout.data && !draft.rewritten.contains(&index) {
+            draft.resize(span, span.bytes)?;
+            draft.rewritten.push(index);
         }
     }
-    plan.head.push(Piece::Copy { from: copied, to: data.offset });
+    let (come, gone) = draft.growth();
+    let total = header.file_bytes - header.data_bytes - gone + samples_bytes + come;
+    let lengths = Lengths { total, data: body_bytes, same_data };
+    let other_form = sizes::settle(&mut draft, header, lengths, changes.riff_limit_bytes)?;
+    let Draft { mut splices, rewritten, notes, .. } = draft;
+    splices.sort_by_key(|splice| (splice.from, splice.to));
+    let split = splices.partition_point(|splice| splice.from < header.data_offset);
+    Ok(Plan {
+        head: pieces(0, header.data_offset, &splices[..split]),
+        tail: pieces(samples_end, header.file_bytes, &splices[split..]),
+        data_frame_kept: same_data && !other_form,
+        rewritten,
+        notes,
+    })
+}
+
+fn pieces(from: u64, to: u64, splices: &[Splice]) -> Vec<Piece> {
+    let mut pieces = Vec::new();
+    let mut copied = from;
+    for splice in splices {
+        if copied < splice.from {
+            pieces.push(Piece::Copy { from: copied, to: splice.from });
+        }
+        if !splice.bytes.is_empty() {
+            pieces.push(Piece::Bytes(splice.bytes.clone()));
+        }
+        copied = splice.to;
+    }
+    if copied < to {
+        pieces.push(Piece::Copy { from: copied, to });
+    }
+    pieces
+}
+
+/// `fmt ` and `fact` for another format. Float samples need a `fact` chunk with their
+/// number (Multimedia Programming Interface and Data Specifications 1.0, 1991:
+/// required for any coding but PCM); one that is there is set right.
+fn coding(draft: &mut Draft<'_>, header: &Header, changes: &Changes) -> Result<(), WaveError> {
+    let (layout, form, format) = (draft.layout, header.form, changes.format);
+    // EBU Tech 3306: a count beyond 32 bits stands in `ds64`.
+    let count = form.write_u32(u32::try_from(header.frames).unwrap_or(ELSEWHERE));
+    if format != header.format {
+        let body = format::rewrite(&layout.fmt_body, header.channels, header.header_rate_hz, format, form);
+        draft.edit(&Edit { index: layout.fmt, body })?;
+        draft.notes.push(format!("`fmt ` was rewritten for {}", format.encoding.name()));
+        if format.encoding.is_float() && layout.fact.is_none() {
+            let after = layout.spans[layout.fmt].next;
+            draft.splice(after, after, [&b"fact"[..], &draft.sized(&count)?].concat());
+            draft.notes.push("a `fact` chunk was added after `fmt `, as float samples require one".into());
+        }
+    }
+    if let Some((index, declared)) = layout.fact
+        && form.write_u32(declared) != count
+        && !(form.is_wide() && declared == ELSEWHERE)
+    {
+        let span = layout.spans[index];
+        draft.overwrite(span.body(), &count);
+        if span.size_wrong {
+            draft.resize(&span, span.bytes)?;
+        }
+        draft.rewritten.push(index);
+        draft.notes.push(format!("`fact` was corrected from {declared} to {} frames", header.frames));
+    }
+    Ok(())
 }

@@ -4,13 +4,14 @@ use std::io::{Read, Seek};
 
 use sha2::{Digest, Sha256};
 
-use super::chunks::{self, Layout};
+use super::chunks::Layout;
 use super::codec;
 use super::error::WaveError;
 use super::figures::{BelowValid, FullScale, UlpPower, rounding_power};
+use super::form::ELSEWHERE;
+use super::guano::{self, RateMeaning};
 use super::source::Source;
-use super::stale::has_loudness;
-use super::{BLOCK_BYTES, Chunk, Encoding, Header, InputFigures, hex};
+use super::{BLOCK_BYTES, Chunk, Encoding, Header, InputFigures, hex, stale, walk};
 
 /// Reads a recording's samples in order, hashing every byte of the file on the way.
 ///
@@ -66,10 +67,26 @@ impl<R: Read + Seek> Reader<R> {
     /// whole frames to be read is no error but a note in the [`Header`].
     pub fn open(inner: R) -> Result<Self, WaveError> {
         let mut source = Source::new(inner)?;
-        let layout = chunks::walk(&mut source)?;
+        let layout = walk::walk(&mut source)?;
         let header = header(&mut source, &layout)?;
         let pass = Pass::new(&header);
         Ok(Reader { source, header, layout, pass, buffer: Vec::new() })
+    }
+
+    /// As [`Self::open`], and settles which sample rate frequencies mean: the header's,
+    /// unless GUANO metadata says that the recording is time-expanded. With
+    /// [`RateMeaning::Acoustic`] [`Header::rate_hz`] is then the rate at which sound was
+    /// sampled. Recordings that are not time-expanded are the same under any `meaning`.
+    ///
+    /// # Errors
+    /// Those of [`Self::open`]. A time-expanded recording without a `meaning`; a `TE` (or,
+    /// where that is missing, a `Samplerate`) that can't be read, unless the header's rate is
+    /// meant; fields that contradict each other, or an acoustic rate that is no whole number
+    /// of Hz within 32 bits, where it is the one meant.
+    pub fn open_as(inner: R, meaning: Option<RateMeaning>) -> Result<Self, WaveError> {
+        let mut reader = Self::open(inner)?;
+        guano::resolve(&mut reader.header, meaning)?;
+        Ok(reader)
     }
 
     /// What the header says.
@@ -123,7 +140,7 @@ impl<R: Read + Seek> Reader<R> {
             self.pass.hasher.update(&self.buffer);
         }
         let starts: Vec<usize> = planes.iter().map(Vec::len).collect();
-        codec::decode(self.header.format.encoding, &self.buffer, planes);
+        codec::decode(self.header.format.encoding, self.header.form.is_big_endian(), &self.buffer, planes);
 
         let blocks = || planes.iter().zip(&starts).map(|(plane, &start)| &plane[start..]);
         if self.header.format.encoding.is_float() {
@@ -247,28 +264,36 @@ fn header<R: Read + Seek>(source: &mut Source<R>, layout: &Layout) -> Result<Hea
     let data = layout.spans[layout.data];
     let frames = layout.data_bytes / layout.frame_bytes();
     let mut notes = layout.notes.clone();
-    let mut bext_loudness = false;
-    for span in &layout.spans {
-        bext_loudness |= has_loudness(source, span)?;
+    let form = layout.sizes.form;
+    let mut stale = Vec::new();
+    for (index, span) in layout.spans.iter().enumerate() {
+        stale.extend(stale::gives(source, span, form)?.map(|what| (index, what)));
     }
+    // EBU Tech 3306: a count that needs more than 32 bits stands in `ds64`.
     if let Some((index, declared)) = layout.fact
         && u64::from(declared) != frames
+        && !(form.is_wide() && declared == ELSEWHERE)
     {
         notes.push(format!(
             "`fact` at byte {} declares {declared} frames, `data` holds {frames}; not used",
             layout.spans[index].offset
         ));
     }
+    let guano = guano::read(source, &layout.spans)?;
+    notes.extend(guano.iter().flat_map(|guano| guano.notes.iter().cloned()));
     Ok(Header {
+        form,
         channels: layout.parsed.channels,
         rate_hz: layout.parsed.rate_hz,
+        header_rate_hz: layout.parsed.rate_hz,
         format: layout.parsed.format,
         frames,
         chunks: layout.spans.iter().map(|s| Chunk { id: s.id, offset: s.offset, bytes: s.bytes }).collect(),
         data_offset: data.body(),
         data_bytes: layout.data_bytes,
         file_bytes: source.bytes(),
-        bext_loudness,
+        stale,
+        guano,
         notes,
     })
 }

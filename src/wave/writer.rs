@@ -8,7 +8,7 @@ use super::codec;
 use super::error::WaveError;
 use super::plan::{self, Piece, Plan};
 use super::reader::Reader;
-use super::{BLOCK_BYTES, ChunkFate, SampleFormat, WrittenFigures, hex};
+use super::{BLOCK_BYTES, Changes, ChunkFate, SampleFormat, WrittenFigures, hex};
 
 /// Writes the output recording: the input with the samples of `data` replaced.
 ///
@@ -17,11 +17,14 @@ use super::{BLOCK_BYTES, ChunkFate, SampleFormat, WrittenFigures, hex};
 pub struct Writer<W> {
     sink: Sink<W>,
     format: SampleFormat,
+    big_endian: bool,
     channels: usize,
     frames: u64,
     written: u64,
     plan: Plan,
     buffer: Vec<u8>,
+    /// First byte of the samples in the output.
+    samples_at: u64,
     /// Hash of the input's bytes before the samples and the output's samples, kept
     /// apart only where the output's bytes before the samples are others.
     echo: Option<Sha256>,
@@ -66,11 +69,12 @@ impl<W: Write> Writer<W> {
     /// # Errors
     /// An output beyond 32-bit sizes or with frames beyond 65535 bytes, an input that
     /// changed, and errors of the system.
-    pub fn begin<R: Read + Seek>(inner: W, input: &mut Reader<R>, format: SampleFormat) -> Result<Self, WaveError> {
-        let plan = plan::plan(input, format)?;
+    pub fn begin<R: Read + Seek>(inner: W, input: &mut Reader<R>, changes: &Changes) -> Result<Self, WaveError> {
+        let plan = plan::plan(input, changes)?;
         let data_offset = input.header().data_offset;
         let mut sink = Sink { inner, hasher: Sha256::new(), bytes: 0 };
         sink.put_pieces(&plan.head, input)?;
+        let samples_at = sink.bytes;
         let echo = if plan.head == [Piece::Copy { from: 0, to: data_offset }] {
             None
         } else {
@@ -84,13 +88,15 @@ impl<W: Write> Writer<W> {
         let header = input.header();
         Ok(Writer {
             sink,
-            format,
+            format: changes.format,
+            big_endian: header.form.is_big_endian(),
             channels: usize::from(header.channels),
             frames: header.frames,
             written: 0,
             // The head is written; what it took need not be kept.
             plan: Plan { head: Vec::new(), ..plan },
             buffer: Vec::new(),
+            samples_at,
             echo,
         })
     }
@@ -135,7 +141,7 @@ impl<W: Write> Writer<W> {
         while from < frames {
             let to = frames.min(from + per_block);
             self.buffer.resize((to - from) * frame_bytes, 0);
-            codec::encode(encoding, planes, from, to, &mut self.buffer);
+            codec::encode(encoding, self.big_endian, planes, from, to, &mut self.buffer);
             self.sink.put(&self.buffer)?;
             if let Some(echo) = &mut self.echo {
                 echo.update(&self.buffer);
@@ -176,6 +182,7 @@ impl<W: Write> Writer<W> {
         let figures = WrittenFigures {
             sha256: hex(&self.sink.hasher.finalize()),
             bytes: self.sink.bytes,
+            data_offset: self.samples_at,
             chunks: chunks.collect(),
             notes: self.plan.notes,
         };

@@ -26,9 +26,10 @@ impl RawChunk {
         self
     }
 
-    fn put(&self, file: &mut Vec<u8>) {
+    fn put(&self, file: &mut Vec<u8>, big_endian: bool) {
+        let size = self.declared.unwrap_or(self.body.len() as u32);
         file.extend_from_slice(&self.id);
-        file.extend_from_slice(&self.declared.unwrap_or(self.body.len() as u32).to_le_bytes());
+        file.extend_from_slice(&if big_endian { size.to_be_bytes() } else { size.to_le_bytes() });
         file.extend_from_slice(&self.body);
         match &self.pad {
             Some(pad) => file.extend_from_slice(pad),
@@ -40,13 +41,73 @@ impl RawChunk {
 
 /// A file of these chunks with the RIFF size that fits.
 pub fn riff(chunks: &[RawChunk]) -> Vec<u8> {
-    let mut file = b"RIFF\0\0\0\0WAVE".to_vec();
-    for chunk in chunks {
-        chunk.put(&mut file);
-    }
+    let mut file = body(b"RIFF", chunks, false);
     let size = file.len() as u32 - 8;
     file[4..8].copy_from_slice(&size.to_le_bytes());
     file
+}
+
+/// The same with big-endian sizes; bodies are the caller's.
+pub fn rifx(chunks: &[RawChunk]) -> Vec<u8> {
+    let mut file = body(b"RIFX", chunks, true);
+    let size = file.len() as u32 - 8;
+    file[4..8].copy_from_slice(&size.to_be_bytes());
+    file
+}
+
+fn body(form: &[u8; 4], chunks: &[RawChunk], big_endian: bool) -> Vec<u8> {
+    let mut file = [&form[..], &[0xff; 4], b"WAVE"].concat();
+    for chunk in chunks {
+        chunk.put(&mut file, big_endian);
+    }
+    file
+}
+
+/// What a `ds64` is to say, where that is not what fits.
+#[derive(Clone, Debug, Default)]
+pub struct Ds64 {
+    pub riff: Option<u64>,
+    pub data: Option<u64>,
+    pub frames: u64,
+    /// What the count says, if not the length of the table.
+    pub entries: Option<u32>,
+    pub table: Vec<([u8; 4], u64)>,
+    /// Bytes after the table.
+    pub more: Vec<u8>,
+}
+
+impl Ds64 {
+    pub fn frames(frames: u64) -> Self {
+        Ds64 { frames, ..Ds64::default() }
+    }
+
+    pub fn chunk(&self) -> RawChunk {
+        let mut body = Vec::new();
+        body.extend(self.riff.unwrap_or(0).to_le_bytes());
+        body.extend(self.data.unwrap_or(0).to_le_bytes());
+        body.extend(self.frames.to_le_bytes());
+        body.extend(self.entries.unwrap_or(self.table.len() as u32).to_le_bytes());
+        for (id, size) in &self.table {
+            body.extend(id);
+            body.extend(size.to_le_bytes());
+        }
+        body.extend(&self.more);
+        raw(b"ds64", &body)
+    }
+}
+
+/// A file of 64-bit form (EBU Tech 3306, ITU-R BS.2088): `ds64` and these chunks, the
+/// size of `data` in `ds64` unless it declares another. The sizes fit unless `ds64` has others.
+pub fn wide(form: &[u8; 4], ds64: &Ds64, chunks: &[RawChunk]) -> Vec<u8> {
+    let mut chunks = chunks.to_vec();
+    let mut ds64 = ds64.clone();
+    for data in chunks.iter_mut().filter(|chunk| chunk.id == *b"data") {
+        ds64.data = ds64.data.or(Some(data.body.len() as u64));
+        data.declared = data.declared.or(Some(u32::MAX));
+    }
+    let length = body(form, &[&[ds64.chunk()][..], &chunks].concat(), false).len() as u64;
+    ds64.riff = ds64.riff.or(Some(length - 8));
+    body(form, &[&[ds64.chunk()][..], &chunks].concat(), false)
 }
 
 /// The fields of `fmt `.
@@ -98,6 +159,20 @@ impl FmtFields {
 
     pub fn chunk(self) -> RawChunk {
         raw(b"fmt ", &self.body())
+    }
+
+    /// The same body with every number big-endian, those of the GUID too if `guid`.
+    pub fn big_endian(self, guid: bool) -> Vec<u8> {
+        let mut body = self.body();
+        let mut at = 0;
+        let guid = if guid { &[4, 2, 2][..] } else { &[] };
+        for bytes in [2, 2, 4, 4, 2, 2, 2, 2, 4].iter().chain(guid) {
+            if let Some(field) = body.get_mut(at..at + bytes) {
+                field.reverse();
+            }
+            at += bytes;
+        }
+        body
     }
 }
 

@@ -4,12 +4,12 @@
 use std::cell::Cell;
 use std::io::{self, Cursor, Read, Seek, SeekFrom};
 
-use bandproof::wave::{Encoding, Reader, SampleFormat, Writer};
+use bandproof::wave::{Changes, Encoding, Form, Header, Reader, SampleFormat, Writer};
 use proptest::prelude::*;
 use proptest::test_runner::TestRunner;
 
-use crate::build::{FLOAT, FmtFields, PCM, pcm16_mono, raw, riff};
-use crate::run::{copy, copy_with, error, samples};
+use crate::build::{Ds64, FLOAT, FmtFields, PCM, pcm16_mono, raw, riff, rifx, wide};
+use crate::run::{copy, copy_changed, copy_with, error, samples};
 
 /// Copies a damaged file; the output must be a sound one with the same samples.
 fn repaired(file: &[u8]) -> (Vec<u8>, Vec<String>) {
@@ -92,11 +92,12 @@ fn a_wrong_riff_size_is_noted_and_set_right_and_nothing_else_changes() {
 }
 
 #[test]
-fn a_last_chunk_cut_short_is_carried_over() {
+fn a_last_chunk_cut_short_is_carried_over_with_the_size_it_has() {
     let sound = pcm16_mono(&[], 20, &[raw(b"smpl", &[1; 60])]);
     let file = &sound[..sound.len() - 25];
     let copied = copy(file).unwrap();
-    assert_eq!(copied.output[8..], file[8..]);
+    assert!(copied.output == pcm16_mono(&[], 20, &[raw(b"smpl", &[1; 35]).padded(&[])]));
+    assert_eq!(copied.written.chunks.iter().map(|c| c.kept).collect::<Vec<_>>(), [true, true, false]);
     assert!(copied.header.notes[0].contains("claims 60 bytes, the file ends after 35"), "{:?}", copied.header.notes);
     assert_eq!(copied.header.chunks[2].bytes, 35);
 }
@@ -171,9 +172,9 @@ fn a_failing_disk_is_named_with_what_was_done_and_where() {
     let file = pcm16_mono(&[], 100, &[]);
     let mut reader = Reader::open(Cursor::new(&file)).unwrap();
     let format = SampleFormat::full(Encoding::Pcm16);
-    let error = Writer::begin(Full(10), &mut reader, format).unwrap_err();
+    let error = Writer::begin(Full(10), &mut reader, &Changes::samples(format)).unwrap_err();
     assert_eq!(error.to_string(), "byte 0: writing the output: no space left");
-    let mut writer = Writer::begin(Full(100), &mut reader, format).unwrap();
+    let mut writer = Writer::begin(Full(100), &mut reader, &Changes::samples(format)).unwrap();
     let error = writer.write(&[vec![0.0; 100]]).unwrap_err();
     assert_eq!(error.to_string(), "byte 44: writing the output: no space left");
 }
@@ -229,23 +230,55 @@ fn strike(file: &mut Vec<u8>, blow: &Blow) {
     }
 }
 
+/// An independent reader that accepts a file finds in it what was claimed; whether it did.
+fn same_to_hound(file: &[u8], header: &Header) -> Result<bool, TestCaseError> {
+    let Ok(mut reader) = hound::WavReader::new(Cursor::new(file)) else { return Ok(false) };
+    let spec = reader.spec();
+    prop_assert_eq!((spec.channels, spec.sample_rate), (header.channels, header.header_rate_hz));
+    if spec.sample_format == hound::SampleFormat::Float
+        || header.format.encoding.bytes() * 8 != header.format.valid_bits
+    {
+        return Ok(false);
+    }
+    prop_assert_eq!(u64::from(reader.duration()), header.frames);
+    let scale = libm::ldexp(1.0, i32::from(spec.bits_per_sample) - 1);
+    let read: Vec<f64> = reader.samples::<i32>().map(|x| f64::from(x.unwrap()) / scale).collect();
+    let planes = samples(file).unwrap();
+    let ours: Vec<f64> = (0..planes[0].len()).flat_map(|k| planes.iter().map(move |plane| plane[k])).collect();
+    prop_assert!(read == ours);
+    Ok(true)
+}
+
 /// Whatever happens to a file, it ends in a sentence or in a sound output with the
 /// same samples.
 #[test]
 fn no_damage_panics_hangs_or_writes_an_unsound_file() {
-    let (read, refused) = (Cell::new(0), Cell::new(0));
-    let damage = (prop::collection::vec(blow(), 1..5), any::<bool>(), any::<bool>());
-    let mut runner = TestRunner::new(ProptestConfig::with_cases(3000));
+    let (read, refused, compared) = (Cell::new(0), Cell::new(0), Cell::new(0));
+    let forms = prop::sample::select(vec![Form::Riff, Form::Rifx, Form::Rf64, Form::Bw64]);
+    let damage = (prop::collection::vec(blow(), 1..5), any::<bool>(), any::<bool>(), forms);
+    let mut runner = TestRunner::new(ProptestConfig::with_cases(8000));
     runner
-        .run(&damage, |(blows, extensible, after)| {
+        .run(&damage, |(blows, extensible, after, form)| {
             let fmt = FmtFields::plain(PCM, 2, 16);
             let fmt = if extensible { fmt.extensible(16, 3) } else { fmt };
-            let fact = raw(b"fact", &[20, 0, 0, 0]);
-            let mut chunks = vec![fmt.chunk(), raw(b"LIST", b"INFOa"), fact, raw(b"data", &[3; 80])];
+            let big = form == Form::Rifx;
+            let body = if big { fmt.big_endian(true) } else { fmt.body() };
+            let fact = raw(b"fact", &if big { [0, 0, 0, 20] } else { [20, 0, 0, 0] });
+            // No two samples alike: a shift by a byte shows.
+            let data: Vec<u8> = (0..80u8).map(|k| k.wrapping_mul(37)).collect();
+            // hound skips no pad byte.
+            let list = raw(b"LIST", if after { &b"INFOa"[..] } else { b"INFO" });
+            let mut chunks = vec![raw(b"fmt ", &body), list, fact, raw(b"data", &data)];
             if after {
                 chunks.extend([raw(b"guan", b"GUANO|Version:1.0"), raw(b"cue ", &[0; 4])]);
             }
-            let mut file = riff(&chunks);
+            let table = Ds64 { table: vec![(*b"abcd", 9)], ..Ds64::frames(20) };
+            let mut file = match form {
+                Form::Riff => riff(&chunks),
+                Form::Rifx => rifx(&chunks),
+                Form::Rf64 => wide(b"RF64", &table, &chunks),
+                Form::Bw64 => wide(b"BW64", &table, &chunks),
+            };
             for blow in &blows {
                 strike(&mut file, blow);
             }
@@ -262,7 +295,17 @@ fn no_damage_panics_hangs_or_writes_an_unsound_file() {
             let again = copy(&copied.output).unwrap();
             prop_assert!(again.output == copied.output);
             prop_assert_eq!(samples(&copied.output).unwrap(), samples(&file).unwrap());
+            prop_assert_eq!(again.header.form, copied.header.form);
+            compared.set(compared.get() + u32::from(same_to_hound(&copied.output, &copied.header)?));
             // And to another format, where everything but the samples is laid out anew.
+            let grown = Changes { riff_limit_bytes: 0, ..Changes::samples(copied.header.format) };
+            match copy_changed(&file, &grown, 7, |x| x) {
+                Ok(grown) => {
+                    prop_assert_eq!(samples(&grown.output).unwrap(), samples(&file).unwrap());
+                    prop_assert!(copy(&grown.output).unwrap().output == grown.output);
+                }
+                Err(error) => prop_assert!(copied.header.form == Form::Rifx, "{}", error),
+            }
             match copy_with(&file, Some(SampleFormat::full(Encoding::Float64)), 7, |x| x) {
                 Ok(wide) => prop_assert_eq!(samples(&wide.output).unwrap(), samples(&file).unwrap()),
                 Err(_) => prop_assert!(copied.header.channels > 8191),
@@ -271,5 +314,5 @@ fn no_damage_panics_hangs_or_writes_an_unsound_file() {
         })
         .unwrap();
     // Neither side may become a rarity that no longer tests anything.
-    assert!(read.get() > 300 && refused.get() > 300, "{read:?} {refused:?}");
+    assert!(read.get() > 800 && refused.get() > 800 && compared.get() > 200, "{read:?} {refused:?} {compared:?}");
 }

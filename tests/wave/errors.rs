@@ -3,7 +3,7 @@
 
 use std::io::Cursor;
 
-use bandproof::wave::{Encoding, Reader, SampleFormat, Writer};
+use bandproof::wave::{Changes, Encoding, Reader, SampleFormat, Writer};
 
 use crate::build::{FLOAT, FmtFields, PCM, pcm16_mono, raw, riff};
 use crate::run::{copy, error};
@@ -20,13 +20,8 @@ fn files_that_are_no_wav_files_say_what_they_begin_with() {
     }
     let only_head = error(b"RIFF\x04\0\0\0WAVE");
     assert!(only_head.starts_with("byte 12: the file ends, expected a `data` chunk"), "{only_head}");
-    for form in [b"RIFX", b"RF64", b"BW64"] {
-        let mut file = pcm16_mono(&[], 3, &[]);
-        file[..4].copy_from_slice(form);
-        let text = error(&file);
-        let name = String::from_utf8_lossy(form).into_owned();
-        assert!(text.starts_with(&format!("byte 0: {name} files")) && text.contains("convert"), "{text}");
-    }
+    let form = error(b"FORM\0\0\0\x04AIFF");
+    assert!(form.starts_with("byte 0: FORM files") && form.contains("convert"), "{form}");
 }
 
 #[test]
@@ -34,7 +29,6 @@ fn arrangements_not_read_are_named_with_their_place() {
     let fmt = FmtFields::plain(PCM, 1, 16).chunk();
     let data = raw(b"data", &[0; 4]);
     let cases = [
-        (riff(&[data.clone(), fmt.clone()]), "byte 24: `fmt ` after `data` is not read"),
         (riff(&[fmt.clone(), data.clone(), data.clone()]), "byte 48: a second `data` chunk is not read"),
         (riff(&[fmt.clone(), fmt.clone(), data.clone()]), "byte 36: a second `fmt ` chunk is not read"),
         (riff(&[fmt.clone(), raw(b"LIST", b"wavldata\0\0\0\0")]), "byte 36: a `wavl` list"),
@@ -177,7 +171,8 @@ fn the_writer_refuses_what_its_format_can_not_hold() {
     let file = pcm16_mono(&[], 4, &[]);
     let try_to_write = |encoding, value| {
         let mut reader = Reader::open(Cursor::new(&file)).unwrap();
-        let mut writer = Writer::begin(Vec::new(), &mut reader, SampleFormat::full(encoding)).unwrap();
+        let mut writer =
+            Writer::begin(Vec::new(), &mut reader, &Changes::samples(SampleFormat::full(encoding))).unwrap();
         writer.write(&[vec![0.0, 0.0, value, 0.0]]).map_err(|e| e.to_string())
     };
     let next_up = |x: f64| f64::from_bits(x.to_bits() + 1);
@@ -204,7 +199,7 @@ fn the_writer_holds_the_caller_to_the_input_s_frames_and_channels() {
     let file = pcm16_mono(&[], 4, &[]);
     let format = SampleFormat::full(Encoding::Pcm16);
     let mut reader = Reader::open(Cursor::new(&file)).unwrap();
-    let mut writer = Writer::begin(Vec::new(), &mut reader, format).unwrap();
+    let mut writer = Writer::begin(Vec::new(), &mut reader, &Changes::samples(format)).unwrap();
     assert!(writer.write(&[vec![0.0], vec![0.0]]).unwrap_err().to_string().contains("2 channels"));
     writer.write(&[vec![0.0; 3]]).unwrap();
     assert!(writer.write(&[vec![0.0; 2]]).unwrap_err().to_string().starts_with("5 frames written, expected 4"));

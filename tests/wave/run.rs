@@ -2,7 +2,7 @@
 
 use std::io::Cursor;
 
-use bandproof::wave::{Header, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
+use bandproof::wave::{Changes, Header, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
 use sha2::{Digest, Sha256};
 
 #[derive(Debug)]
@@ -25,9 +25,23 @@ pub fn copy_with(
     block: usize,
     change: impl Fn(f64) -> f64,
 ) -> Result<Copied, WaveError> {
+    let format = match format {
+        Some(format) => format,
+        None => Reader::open(Cursor::new(file))?.header().format,
+    };
+    copy_changed(file, &Changes::samples(format), block, change)
+}
+
+/// The same with whatever else is to change.
+pub fn copy_changed(
+    file: &[u8],
+    changes: &Changes,
+    block: usize,
+    change: impl Fn(f64) -> f64,
+) -> Result<Copied, WaveError> {
     let mut reader = Reader::open(Cursor::new(file))?;
     let header = reader.header().clone();
-    let mut writer = Writer::begin(Vec::new(), &mut reader, format.unwrap_or(header.format))?;
+    let mut writer = Writer::begin(Vec::new(), &mut reader, changes)?;
     let mut planes = vec![Vec::new(); usize::from(header.channels)];
     loop {
         planes.iter_mut().for_each(Vec::clear);
