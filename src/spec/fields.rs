@@ -222,6 +222,23 @@ impl<'n> Fields<'n> {
         })
     }
 
+    /// Yes or no.
+    pub fn flag(&self, key: &str, problems: &mut Problems) -> Got<bool> {
+        self.get(key, |node| {
+            if let Value::Truth(truth) = node.value {
+                return Some(truth);
+            }
+            let repair = match &node.value {
+                // `history = "true"` is a near miss.
+                Value::Text(text) if text.eq_ignore_ascii_case("true") => "write true without quotation marks",
+                Value::Text(text) if text.eq_ignore_ascii_case("false") => "write false without quotation marks",
+                _ => "write true or false",
+            };
+            problems.add(&node.place, format!("{key} is {}, not true or false", node.value.show()), repair);
+            None
+        })
+    }
+
     /// One of a choice of words.
     pub fn word<W: Word>(&self, key: &str, problems: &mut Problems) -> Got<W> {
         self.get(key, |node| {
@@ -229,6 +246,7 @@ impl<'n> Fields<'n> {
                 Value::Text(text) => text.clone(),
                 // `encoding = 16` and `dither = false` are near misses too.
                 Value::Number(number) => show_number(*number),
+                Value::Truth(truth) => truth.to_string(),
                 Value::Other(words) => words.clone(),
                 Value::List(_) | Value::Table(_) => String::new(),
             };

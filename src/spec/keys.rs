@@ -6,7 +6,7 @@ use schemars::JsonSchema;
 use serde::Serialize;
 
 use super::schema;
-use super::types::{Band, BeyondHalfRate, Family, OutputSpec, Stage};
+use super::types::{Band, BeyondHalfRate, Family, OutputSpec, RateMeaning, Stage};
 
 /// A spec: what is done to the recordings of a dataset, and what must come out. TOML and
 /// JSON files have the same keys. Frequencies and widths are in Hz, ratios of levels in dB,
@@ -43,6 +43,13 @@ pub(super) struct SpecKeys<'s> {
     #[serde(default, skip_serializing_if = "Option::is_none")]
     #[schemars(schema_with = "schema::name")]
     pub reference_band: Option<&'s str>,
+    /// Which sample rate every frequency of the spec means in time-expanded recordings, as
+    /// GUANO metadata tells them (`TE`, `Samplerate`): `header` is the rate that the header
+    /// states, `acoustic` the higher one at which the sound was sampled. Without this key such
+    /// recordings fail; all others are the same with it and without it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(schema_with = "schema::rate")]
+    pub rate: Option<RateMeaning>,
     /// How filtered samples are written.
     #[serde(default)]
     pub output: OutputSpec,

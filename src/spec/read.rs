@@ -10,7 +10,7 @@ use super::quantity::{Low, Quantity};
 use super::read_band;
 use super::read_stage;
 use super::tree::{Node, Value, quote, show_hz, show_number};
-use super::types::{BeyondHalfRate, Dither, OutputEncoding, OutputSpec, Overload, Row, Spec, Width};
+use super::types::{BeyondHalfRate, Dither, OutputEncoding, OutputSpec, Overload, RateMeaning, Row, Spec, Width};
 
 /// Half the highest sample rate that the 32-bit field of a WAV header can state, Hz: no
 /// frequency above it lies below half the rate of any recording.
@@ -36,8 +36,9 @@ pub(super) const HARMONICS: Quantity =
     Quantity { noun: "a whole number", unit: "", low: Low::From(1.0), high: MAX_HARMONICS };
 pub(super) const GAIN: Quantity = Quantity { noun: "a gain", unit: "dB", low: Low::From(-MAX_DB), high: MAX_DB };
 
-pub(super) const TOP_KEYS: &[&str] = &["title", "beyond_half_rate", "reference_band", "output", "stage", "band"];
-pub(super) const OUTPUT_KEYS: &[&str] = &["encoding", "dither", "overload", "gain_db"];
+pub(super) const TOP_KEYS: &[&str] =
+    &["title", "beyond_half_rate", "reference_band", "rate", "output", "stage", "band"];
+pub(super) const OUTPUT_KEYS: &[&str] = &["encoding", "dither", "overload", "gain_db", "history"];
 
 /// Reads a whole spec.
 ///
@@ -58,6 +59,7 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     let title = title(&fields, problems);
     let beyond_half_rate = fields.word("beyond_half_rate", problems).or(BeyondHalfRate::default());
     let reference = fields.text("reference_band", problems);
+    let rate = fields.word::<RateMeaning>("rate", problems);
     let output = match fields.entry("output") {
         Some(entry) => output(&entry.node, problems),
         None => Some(OutputSpec::default()),
@@ -81,6 +83,7 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     Some(Spec {
         title: title?,
         beyond_half_rate: beyond_half_rate?,
+        rate: rate.value(),
         output: output?,
         reference_band: reference.value().map(str::to_owned),
         stages: stages.into_iter().collect::<Option<_>>()?,
@@ -111,7 +114,8 @@ fn output(node: &Node, problems: &mut Problems) -> Option<OutputSpec> {
     let dither = fields.word("dither", problems).or(Dither::default());
     let overload = fields.word("overload", problems).or(Overload::default());
     let gain_db = fields.number("gain_db", &GAIN, problems).or(0.0);
-    Some(OutputSpec { encoding: encoding?, dither: dither?, overload: overload?, gain_db: gain_db? })
+    let history = fields.flag("history", problems).or(false);
+    Some(OutputSpec { encoding: encoding?, dither: dither?, overload: overload?, gain_db: gain_db?, history: history? })
 }
 
 /// The tables of `[[key]]`; empty where there are none, nothing where the key is wrong.

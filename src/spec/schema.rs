@@ -11,7 +11,7 @@ use super::quantity::{Low, Quantity};
 use super::read::{FREQUENCY, GAIN, HARMONICS, Q, Q_AT_ZERO_HZ, WIDTH};
 use super::read_band::{FROM, KEEP, REDUCE, REQUIREMENTS, RESIDUAL};
 use super::read_stage::{self, BAND_KEYS, EDGE_KEYS, Kind, NOTCH_KEYS, RIPPLE, STOP, order_range};
-use super::types::{Band, Family, FilterKind, NotchStage, Spec, Stage};
+use super::types::{Band, Family, FilterKind, NotchStage, RateMeaning, Spec, Stage};
 use super::words::Word;
 use crate::schema::document;
 
@@ -209,6 +209,7 @@ parts! {
         schema.insert("pattern".to_owned(), pattern.into());
         schema
     },
+    rate => choice::<RateMeaning>(),
     order => whole(&order_range(None)),
     frequency => number(&FREQUENCY),
     edges => json_schema!({"type": "array", "items": number(&FREQUENCY), "minItems": 2, "maxItems": 2}),

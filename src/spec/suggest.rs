@@ -42,6 +42,22 @@ const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
     (&["bands", "requirement", "requirements", "limits"], &["band"]),
     (&["out", "outputs", "write"], &["output"]),
     (
+        &[
+            "samplerate",
+            "fs",
+            "sr",
+            "timeexpansion",
+            "te",
+            "expansion",
+            "rates",
+            "whichrate",
+            "ratemeaning",
+            "timebase",
+        ],
+        &["rate"],
+    ),
+    (&["codinghistory", "log", "provenance", "metadata", "appendhistory", "writehistory"], &["history"]),
+    (
         &["reference", "ref", "refband", "referencerange", "zeroband", "normalizeband", "calibrationband", "levelband"],
         &["reference_band"],
     ),

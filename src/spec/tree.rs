@@ -23,7 +23,9 @@ pub(super) enum Value {
     List(Vec<Node>),
     /// Keys and values in the order of the file. JSON can repeat a key.
     Table(Vec<Entry>),
-    /// Anything no key takes, in words (`true`, `null`, `a date`).
+    /// Yes or no.
+    Truth(bool),
+    /// Anything no key takes, in words (`null`, `a date`).
     Other(String),
 }
 
@@ -78,6 +80,7 @@ impl Value {
             Self::Number(number) => show_number(*number),
             Self::List(_) => "a list".to_owned(),
             Self::Table(_) => "a table".to_owned(),
+            Self::Truth(truth) => truth.to_string(),
             Self::Other(words) => words.clone(),
         }
     }

@@ -32,6 +32,7 @@ enum Raw {
     Number(f64),
     List(Vec<Raw>),
     Object(Vec<(String, Raw)>),
+    Truth(bool),
     Other(&'static str),
 }
 
@@ -39,6 +40,7 @@ fn node(raw: Raw, path: String) -> Node {
     let value = match raw {
         Raw::Text(text) => Value::Text(text),
         Raw::Number(number) => Value::Number(number),
+        Raw::Truth(truth) => Value::Truth(truth),
         Raw::Other(words) => Value::Other(words.to_owned()),
         Raw::List(items) => {
             let item = |(index, item)| node(item, format!("{path}[{index}]"));
@@ -79,7 +81,7 @@ impl<'de> Visitor<'de> for RawVisitor {
     }
 
     fn visit_bool<E>(self, truth: bool) -> Result<Raw, E> {
-        Ok(Raw::Other(if truth { "true" } else { "false" }))
+        Ok(Raw::Truth(truth))
     }
 
     fn visit_i64<E>(self, number: i64) -> Result<Raw, E> {

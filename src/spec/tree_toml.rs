@@ -75,7 +75,7 @@ fn node(from: &Spanned<DeValue<'_>>, places: &Places<'_>) -> Node {
             Ok(number) => Value::Number(number),
             Err(_) => Value::Other(float.as_str().to_owned()),
         },
-        DeValue::Boolean(truth) => Value::Other(truth.to_string()),
+        DeValue::Boolean(truth) => Value::Truth(*truth),
         DeValue::Datetime(_) => Value::Other("a date or time".to_owned()),
         DeValue::Array(list) => Value::List(list.iter().map(|item| node(item, places)).collect()),
         DeValue::Table(entries) => table(entries, places),

@@ -1,5 +1,7 @@
 //! The normalized spec: every default filled in, every value in range.
 
+pub use crate::wave::RateMeaning;
+
 /// What to do with a dataset and what must come out.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Spec {
@@ -7,6 +9,9 @@ pub struct Spec {
     pub title: Option<String>,
     /// What happens to stages and bands that do not fit below half the sample rate.
     pub beyond_half_rate: BeyondHalfRate,
+    /// Which sample rate every frequency of the spec means in time-expanded recordings;
+    /// without it they fail.
+    pub rate: Option<RateMeaning>,
     /// How filtered samples are written.
     pub output: OutputSpec,
     /// Name of one keep or observed band, `name xN` for a line of a row: its gain counts
@@ -65,6 +70,9 @@ pub struct OutputSpec {
     /// One fixed gain for the whole dataset, dB, from -200 to 200.
     #[schemars(schema_with = "super::schema::gain")]
     pub gain_db: f64,
+    /// Whether what was done is appended to each recording's own metadata: a line to the
+    /// coding history of its `bext` chunk, without one a field to its `guan` chunk.
+    pub history: bool,
 }
 
 /// `output.encoding`.

@@ -5,7 +5,7 @@ use serde::{Serialize, Serializer};
 use std::borrow::Cow;
 
 use super::schema;
-use super::types::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload};
+use super::types::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload, RateMeaning};
 
 /// A choice among words.
 pub(super) trait Word: Copy + 'static {
@@ -65,6 +65,11 @@ macro_rules! words {
 words!(BeyondHalfRate {
     Error => "error" | "fail" | "refuse" | "stop",
     LeaveOut => "leave-out" | "skip" | "drop" | "ignore" | "omit",
+});
+
+words!(RateMeaning {
+    Header => "header" | "file" | "playback" | "slow" | "expanded" | "timeexpanded" | "nominal",
+    Acoustic => "acoustic" | "sound" | "real" | "original" | "recorded" | "sampled" | "guano",
 });
 
 words!(OutputEncoding {

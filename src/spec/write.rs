@@ -27,6 +27,7 @@ impl Serialize for Spec {
             title: self.title.as_deref(),
             beyond_half_rate: self.beyond_half_rate,
             reference_band: self.reference_band.as_deref(),
+            rate: self.rate,
             output: self.output,
             stage: &self.stages,
             band: &self.bands,

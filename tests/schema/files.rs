@@ -40,8 +40,8 @@ fn every_spec_of_the_project_is_valid_as_written_and_normalized() {
 #[test]
 fn a_spec_with_every_key_is_valid() {
     let all = serde_json::json!({
-        "title": "two\nlines", "beyond_half_rate": "leave-out", "reference_band": "calls",
-        "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -1.5},
+        "title": "two\nlines", "beyond_half_rate": "leave-out", "reference_band": "calls", "rate": "header",
+        "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -1.5, "history": true},
         "stage": [
             {"kind": "highpass", "family": "butterworth", "order": 4, "edge_hz": 40},
             {"kind": "bandstop", "family": "elliptic", "order": 14, "center_hz": 50, "width_hz": 3.2, "harmonics": 8,

@@ -1,6 +1,6 @@
 //! Spec files as people write them, of every kind, and ways to damage them.
 
-use bandproof::spec::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload};
+use bandproof::spec::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload, RateMeaning};
 use proptest::prelude::*;
 use proptest::sample::{Index, select};
 use serde_json::{Map, Value, json};
@@ -106,15 +106,23 @@ fn bands() -> impl Strategy<Value = Vec<Value>> {
 
 /// A valid spec, any key left out that may be.
 pub fn document() -> impl Strategy<Value = Value> {
-    let output = (select(OutputEncoding::ALL), select(Dither::ALL), select(Overload::ALL), number(-200.0, 200.0))
-        .prop_flat_map(|(encoding, dither, overload, gain_db)| {
+    let output = (
+        select(OutputEncoding::ALL),
+        select(Dither::ALL),
+        select(Overload::ALL),
+        number(-200.0, 200.0),
+        any::<bool>(),
+    )
+        .prop_flat_map(|(encoding, dither, overload, gain_db, history)| {
             let all = json!({
                 "encoding": encoding.name(), "dither": dither.name(), "overload": overload.name(), "gain_db": gain_db,
+                "history": history,
             });
             some_of(all.as_object().unwrap().clone())
         });
-    let top = (select(BeyondHalfRate::ALL), output, "\\PC{0,12}").prop_flat_map(|(beyond, output, title)| {
-        let all = json!({"title": title, "beyond_half_rate": beyond.name(), "output": output});
+    let top = (select(BeyondHalfRate::ALL), select(RateMeaning::ALL), output, "\\PC{0,12}");
+    let top = top.prop_flat_map(|(beyond, rate, output, title)| {
+        let all = json!({"title": title, "beyond_half_rate": beyond.name(), "rate": rate.name(), "output": output});
         some_of(all.as_object().unwrap().clone())
     });
     let stages = proptest::collection::vec(stage(), 0..4);
@@ -156,6 +164,7 @@ const KEYS: &[&str] = &[
     "title",
     "beyond_half_rate",
     "reference_band",
+    "rate",
     "output",
     "stage",
     "band",
@@ -163,6 +172,7 @@ const KEYS: &[&str] = &[
     "dither",
     "overload",
     "gain_db",
+    "history",
     "kind",
     "family",
     "order",

@@ -6,12 +6,14 @@ use bandproof::spec::*;
 pub(crate) const REED_BED_TOML: &str = r#"title = "Reed bed beside the pumping station"
 beyond_half_rate = "leave-out"
 reference_band = "bird calls"
+rate = "acoustic"
 
 [output]
 encoding = "pcm24"
 dither   = "none"
 overload = "scale"
 gain_db  = -1
+history  = true
 
 [[stage]]
 kind = "highpass"
@@ -86,7 +88,8 @@ pub(crate) const REED_BED_JSON: &str = r#"{
   "title": "Reed bed beside the pumping station",
   "beyond_half_rate": "leave-out",
   "reference_band": "bird calls",
-  "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -1},
+  "rate": "acoustic",
+  "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -1, "history": true},
   "stage": [
     {"kind": "highpass", "family": "butterworth", "order": 4, "edge_hz": 40},
     {"kind": "bandstop", "family": "elliptic", "order": 3, "center_hz": 50, "width_hz": 3.2, "harmonics": 8,
@@ -113,6 +116,7 @@ fn reed_bed() -> Spec {
     let band = |name: &str, extent, requirement| Band { name: name.to_owned(), extent, requirement };
     Spec {
         reference_band: Some("bird calls".to_owned()),
+        rate: Some(RateMeaning::Acoustic),
         title: Some("Reed bed beside the pumping station".to_owned()),
         beyond_half_rate: BeyondHalfRate::LeaveOut,
         output: OutputSpec {
@@ -120,6 +124,7 @@ fn reed_bed() -> Spec {
             dither: Dither::None,
             overload: Overload::Scale,
             gain_db: -1.0,
+            history: true,
         },
         stages: vec![
             filter(FilterKind::Highpass, Family::Butterworth, 4, Placement::Edge { edge_hz: 40.0 }, None, None),
@@ -176,13 +181,15 @@ fn keys_left_out_get_their_defaults() {
     assert_eq!(spec.title, None);
     assert_eq!(spec.beyond_half_rate, BeyondHalfRate::Error);
     assert_eq!(spec.reference_band, None);
+    assert_eq!(spec.rate, None);
     assert_eq!(
         spec.output,
         OutputSpec {
             encoding: OutputEncoding::Same,
             dither: Dither::Triangular,
             overload: Overload::Refuse,
-            gain_db: 0.0
+            gain_db: 0.0,
+            history: false,
         }
     );
     assert!(spec.stages.is_empty());
@@ -241,6 +248,12 @@ fn every_choice_is_written_by_its_name() {
     }
     let names: Vec<_> = OutputEncoding::ALL.iter().map(|encoding| encoding.name()).collect();
     assert_eq!(names, ["same", "pcm16", "pcm24", "pcm32", "float32", "float64"]);
+    for rate in RateMeaning::ALL {
+        let top = format!("rate = '{}'\n[[band]]\nname = 'a'\nfrom_hz = 5\nto_hz = 9", rate.name());
+        assert_eq!(crate::read(&top).rate, Some(*rate));
+    }
+    let names: Vec<_> = RateMeaning::ALL.iter().map(|rate| rate.name()).collect();
+    assert_eq!(names, ["header", "acoustic"]);
     let names: Vec<_> = Family::ALL.iter().map(|family| family.name()).collect();
     assert_eq!(names, ["butterworth", "chebyshev1", "chebyshev2", "elliptic", "bessel"]);
     let names: Vec<_> = FilterKind::ALL.iter().map(|kind| kind.name()).collect();

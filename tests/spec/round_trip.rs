@@ -112,15 +112,24 @@ fn any_spec() -> impl Strategy<Value = Spec> {
         choice(Dither::ALL),
         choice(Overload::ALL),
         prop_oneof![Just(0.0), -200.0..200.0_f64],
+        any::<bool>(),
     )
-        .prop_map(|(encoding, dither, overload, gain_db)| OutputSpec { encoding, dither, overload, gain_db });
+        .prop_map(|(encoding, dither, overload, gain_db, history)| OutputSpec {
+            encoding,
+            dither,
+            overload,
+            gain_db,
+            history,
+        });
+    let rate = proptest::option::of(choice(RateMeaning::ALL));
     let title = proptest::option::of("\\PC{0,30}");
     let stages = proptest::collection::vec(stage(), 0..5);
     let reference = proptest::option::of(any::<proptest::sample::Index>());
-    (title, choice(BeyondHalfRate::ALL), output, stages, bands(), reference)
-        .prop_map(|(title, beyond_half_rate, output, stages, bands, reference)| Spec {
+    (title, choice(BeyondHalfRate::ALL), output, stages, bands(), reference, rate)
+        .prop_map(|(title, beyond_half_rate, output, stages, bands, reference, rate)| Spec {
             title,
             beyond_half_rate,
+            rate,
             output,
             reference_band: reference.and_then(|index| reference_band(&bands, index)),
             stages,

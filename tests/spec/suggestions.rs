@@ -90,6 +90,7 @@ fn keys_of_the_output_and_the_top() {
             ("gain_db", &["gain", "gian_db"]),
             ("dither", &["dithering", "dihter"]),
             ("overload", &["clip", "clipping", "overlaod"]),
+            ("history", &["coding_history", "append-history", "histroy"]),
         ],
     );
     check(
@@ -99,6 +100,7 @@ fn keys_of_the_output_and_the_top() {
             ("stage", &["stages", "filter", "filters"]),
             ("band", &["bands", "requirements"]),
             ("output", &["out", "ouput"]),
+            ("rate", &["sample_rate", "samplerate", "fs", "time_expansion", "TE", "rate_hz", "raet"]),
             ("beyond_half_rate", &["nyquist", "beyond_nyquist", "beyond-half-rate"]),
             ("reference_band", &["reference", "ref", "ref_band", "referenceBand", "refrence_band", "reference_hz"]),
         ],
@@ -109,7 +111,7 @@ fn keys_of_the_output_and_the_top() {
 fn a_key_near_none_lists_what_is_known() {
     assert_eq!(
         refused("[output]\nwobble = 1\n[[stage]]\nkind = 'notch'\ncenter_hz = 1\nq = 3"),
-        "spec.toml:2:1: unknown key \"wobble\" in output; known keys here: encoding, dither, overload, gain_db"
+        "spec.toml:2:1: unknown key \"wobble\" in output; known keys here: encoding, dither, overload, gain_db, history"
     );
 }
 
@@ -165,6 +167,10 @@ fn words_that_are_no_choice() {
         let said = said(&format!("[output]\n{key} = {written}"));
         assert!(said.contains(&format!("did you mean \"{meant}\"?")), "{key} = {written}: {said}");
     }
+    for (written, meant) in [("'acoustics'", "acoustic"), ("'sound'", "acoustic"), ("'Header'", "header")] {
+        let said = refused(&format!("rate = {written}\n[[stage]]\nkind = 'notch'\ncenter_hz = 1\nq = 3"));
+        assert!(said.contains(&format!("did you mean \"{meant}\"?")), "{written}: {said}");
+    }
     for (key, written, meant) in [
         ("kind", "low-pass", "lowpass"),
         ("kind", "HP", "highpass"),
@@ -190,7 +196,7 @@ fn long_texts_are_cut_and_not_compared() {
         said,
         format!(
             "spec.toml:1:1: unknown key \"{}...\" in the spec; \
-             known keys here: title, beyond_half_rate, reference_band, output, stage, band",
+             known keys here: title, beyond_half_rate, reference_band, rate, output, stage, band",
             "x".repeat(60)
         )
     );
@@ -208,7 +214,7 @@ fn a_key_of_another_meaning_is_not_bent_to_a_known_one() {
     for key in ["phase", "slope", "stop_edge_hz", "numerator", "poles", "match_hz", "enabled", "rate"] {
         assert_eq!(suggested(LOWPASS, key), None, "{key}");
     }
-    for key in ["rate", "design", "history", "phase", "channels"] {
+    for key in ["design", "history", "phase", "channels"] {
         assert_eq!(suggested("", key), None, "{key}");
     }
 }

@@ -269,3 +269,31 @@ fn lists_and_tables_where_they_belong() {
         "spec.toml:6:10: except is the text \"hum\", not a list; write a list of names: except = [\"hum\"]"
     );
 }
+
+#[test]
+fn yes_and_no_are_true_and_false_without_quotation_marks() {
+    let with = |value: &str| format!("[output]\nhistory = {value}\n[[stage]]\nkind = 'notch'\ncenter_hz = 1\nq = 3");
+    for truth in [true, false] {
+        assert_eq!(read(&with(&truth.to_string())).output.history, truth);
+    }
+    for (value, said) in [
+        ("'true'", "history is the text \"true\", not true or false; write true without quotation marks"),
+        ("'False'", "history is the text \"False\", not true or false; write false without quotation marks"),
+        ("'yes'", "history is the text \"yes\", not true or false; write true or false"),
+        ("1", "history is 1, not true or false; write true or false"),
+        ("[]", "history is a list, not true or false; write true or false"),
+        ("{}", "history is a table, not true or false; write true or false"),
+    ] {
+        assert_eq!(refused(&with(value)), format!("spec.toml:2:11: {said}"));
+    }
+    assert_eq!(
+        refused_json(
+            r#"{"output": {"history": null}, "stage": [{"kind": "notch", "center_hz": 1, "q": 3}], "rate": true}"#
+        ),
+        "spec.json: rate: rate can't be true; choose one of header, acoustic\n\
+         spec.json: output.history: history is null, not true or false; write true or false"
+    );
+    // A number is no yes.
+    let said = lowpass("family = 'bessel'\norder = true\nedge_hz = 50");
+    assert!(said.contains("order is true, not a number"), "{said}");
+}
