@@ -1,22 +1,35 @@
-//! What a person wants to read of a run without opening its report: every band
-//! missed and every recording failed by name, and what proof is lacking.
+//! What a person wants to read of a run without opening its report: the bands
+//! missed and the recordings failed by name, and what proof is lacking.
 
 use super::{BandEntry, Db, Finite, Hz, Pair, ReasonCode, Recording, Require, Seconds, Verdict};
 use crate::align::AMBIGUOUS_DELAY;
+use std::cmp::Ordering;
 use std::collections::BTreeMap;
+
+/// How many of a kind are named: nobody reads more of them, and the text of a hundred
+/// thousand would fill the memory.
+pub const MOST_NAMED: usize = 1000;
 
 /// What went wrong, by name. The lists don't depend on the order in which
 /// recordings were added.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Highlights {
-    /// Every band missed, by path, channel and place in the spec.
+    /// Bands missed, by path, channel and place in the spec; the first [`MOST_NAMED`].
     pub missed: Vec<MissedItem>,
-    /// Every failed recording, by path.
+    /// How many more were missed; the report has them all.
+    pub missed_more: u64,
+    /// Failed recordings, by path; the first [`MOST_NAMED`].
     pub failed: Vec<FailedItem>,
+    /// How many more failed.
+    pub failed_more: u64,
     /// What could not be proven, by band in the spec's order and by reason.
     pub unproven: Vec<UnprovenItem>,
     /// How pairs lie; `None` where there are none.
     pub pairs: Option<PairsItem>,
+    /// Recordings that are done and have notes: sizes put right, chunks out of date and the like.
+    pub noted: u64,
+    /// The first of them by path.
+    pub first_noted: Option<String>,
 }
 
 /// How the pairs of a run lie, and how far they are from the design.
@@ -137,10 +150,12 @@ pub struct UnprovenItem {
 /// Collects [`Highlights`] while recordings come in.
 #[derive(Debug, Default)]
 pub(super) struct Collector {
-    missed: Vec<(usize, MissedItem)>,
-    failed: Vec<FailedItem>,
+    missed: First<(usize, MissedItem)>,
+    failed: First<FailedItem>,
     unproven: BTreeMap<(usize, Option<ReasonCode>), Group>,
     pairs: Option<PairsItem>,
+    noted: u64,
+    first_noted: Option<String>,
 }
 
 /// Recordings in which a band was unproven for the same reason.
@@ -155,10 +170,65 @@ struct Group {
     example_reason: Option<String>,
 }
 
+/// The first items of an order, whatever the order in which they come.
+#[derive(Debug)]
+struct First<T> {
+    items: Vec<T>,
+    dropped: u64,
+}
+
+impl<T> Default for First<T> {
+    fn default() -> Self {
+        First { items: Vec::new(), dropped: 0 }
+    }
+}
+
+impl<T> First<T> {
+    fn push(&mut self, item: T, order: fn(&T, &T) -> Ordering) {
+        self.items.push(item);
+        // Sorted once for as many as are kept, not for each.
+        if self.items.len() >= 2 * MOST_NAMED {
+            self.cut(order);
+        }
+    }
+
+    fn cut(&mut self, order: fn(&T, &T) -> Ordering) {
+        self.items.sort_by(order);
+        self.dropped += self.items.len().saturating_sub(MOST_NAMED) as u64;
+        self.items.truncate(MOST_NAMED);
+    }
+
+    /// The items in order, and how many more there were.
+    fn finish(mut self, order: fn(&T, &T) -> Ordering) -> (Vec<T>, u64) {
+        self.cut(order);
+        (self.items, self.dropped)
+    }
+}
+
+fn by_path(a: &FailedItem, b: &FailedItem) -> Ordering {
+    a.path.cmp(&b.path)
+}
+
+/// By path, channel and place in the spec.
+fn by_place((a_place, a): &(usize, MissedItem), (b_place, b): &(usize, MissedItem)) -> Ordering {
+    (&a.path, a.channel, a_place).cmp(&(&b.path, b.channel, b_place))
+}
+
 impl Collector {
     pub(super) fn failed(&mut self, recording: &Recording) {
         let error = recording.error.clone().unwrap_or_default();
-        self.failed.push(FailedItem { path: recording.path.clone(), error });
+        self.failed.push(FailedItem { path: recording.path.clone(), error }, by_path);
+    }
+
+    /// Takes a recording that is done and has notes.
+    pub(super) fn noted(&mut self, recording: &Recording) {
+        if recording.notes.is_empty() {
+            return;
+        }
+        self.noted += 1;
+        if self.first_noted.as_ref().is_none_or(|first| recording.path < *first) {
+            self.first_noted = Some(recording.path.clone());
+        }
     }
 
     /// Takes how a pair lies that was measured.
@@ -181,7 +251,7 @@ impl Collector {
                     figure_db: band.figure_db(),
                     reason: band.reason.clone(),
                 };
-                self.missed.push((place, item));
+                self.missed.push((place, item), by_place);
             }
             Some(Verdict::Unproven) => {
                 let group = self.unproven.entry((place, band.reason_code)).or_insert_with(|| Group {
@@ -217,10 +287,9 @@ impl Collector {
     }
 
     /// `names` are the bands in the spec's order.
-    pub(super) fn finish(mut self, names: &[String]) -> Highlights {
-        self.missed
-            .sort_by(|(a_place, a), (b_place, b)| (&a.path, a.channel, a_place).cmp(&(&b.path, b.channel, b_place)));
-        self.failed.sort_by(|a, b| a.path.cmp(&b.path));
+    pub(super) fn finish(self, names: &[String]) -> Highlights {
+        let (missed, missed_more) = self.missed.finish(by_place);
+        let (failed, failed_more) = self.failed.finish(by_path);
         let unproven = self.unproven.into_iter().map(|((place, reason_code), group)| UnprovenItem {
             band: names.get(place).cloned().unwrap_or_default(),
             reason_code,
@@ -231,10 +300,14 @@ impl Collector {
             example_reason: group.example_reason,
         });
         Highlights {
-            missed: self.missed.into_iter().map(|(_, item)| item).collect(),
-            failed: self.failed,
+            missed: missed.into_iter().map(|(_, item)| item).collect(),
+            missed_more,
+            failed,
+            failed_more,
             unproven: unproven.collect(),
             pairs: self.pairs,
+            noted: self.noted,
+            first_noted: self.first_noted,
         }
     }
 }

@@ -26,7 +26,7 @@ pub use design_entry::{
     CheckResult, DesignBand, DesignEntry, LeftOutEntry, StageEntry, ViolationEntry, WitnessBand, WitnessEntry,
 };
 pub use head::{FORMAT, Head, LEVEL_REFERENCE, REPORT_NAME, Run, SpecEntry};
-pub use highlights::{FailedItem, FarthestItem, Highlights, MissedItem, PairsItem, UnprovenItem};
+pub use highlights::{FailedItem, FarthestItem, Highlights, MOST_NAMED, MissedItem, PairsItem, UnprovenItem};
 pub use layout::write_pretty;
 pub use methods::{EdgeDefinition, Methods, MethodsBand, MethodsLine, MethodsStage, MethodsTransition};
 pub use numbers::{Db, Finite, Hz, NotFinite, Seconds, Share};

@@ -99,6 +99,13 @@ impl Seconds {
     }
 }
 
+impl Finite {
+    /// How many times `one` is `other`; an `other` of 0 counts as 1.
+    pub fn ratio(one: u32, other: u32) -> Self {
+        Finite(f64::from(one) / f64::from(other.max(1)))
+    }
+}
+
 impl From<Duration> for Seconds {
     fn from(duration: Duration) -> Self {
         Seconds(rounded(duration.as_secs_f64(), 1e6))

@@ -19,7 +19,8 @@ pub struct Recording {
     pub error: Option<String>,
     /// What was unusual, each a sentence.
     pub notes: Vec<String>,
-    /// The input; null where its header could not be read.
+    /// The input; null where its header could not be read, or does not tell which sample rate
+    /// the spec's frequencies mean.
     pub input: Option<Input>,
     /// The output; null for a failed recording and in a report of `measure`, where nothing
     /// is written (the recording after stands in `pair`).
@@ -54,7 +55,8 @@ pub struct Input {
     pub sha256: Option<String>,
     /// Length of the file, bytes.
     pub bytes: u64,
-    /// Sample rate, Hz.
+    /// Sample rate that the spec's frequencies mean, Hz: the header's, unless the recording
+    /// is time-expanded and the spec says `rate = "acoustic"`.
     pub rate_hz: u32,
     /// Channels.
     pub channels: u16,
@@ -63,11 +65,16 @@ pub struct Input {
     pub encoding: String,
     /// Frames.
     pub frames: u64,
-    /// Length in seconds: frames over rate.
+    /// Length in seconds: frames over `rate_hz`, so that of the sound itself where that is the
+    /// acoustic rate.
     #[schemars(extend("minimum" = 0))]
     pub seconds: Seconds,
     /// Runs of samples at full scale; null where it was not read to its end.
     pub full_scale_runs: Option<u64>,
+    /// How many times the header's sample rate goes into `rate_hz`: 1 unless the recording is
+    /// time-expanded and the spec says `rate = "acoustic"`.
+    #[schemars(extend("exclusiveMinimum" = 0))]
+    pub time_expansion: Finite,
 }
 
 /// The output of a recording.

@@ -134,6 +134,7 @@ impl SummaryBuilder {
                 return;
             }
         }
+        self.collector.noted(recording);
         self.collector.pair(recording);
         let mut verdicts: Vec<Option<Verdict>> = vec![None; self.bands.len()];
         for channel in &recording.channels {

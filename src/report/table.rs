@@ -23,13 +23,14 @@
 //! | `error` | why it failed | unless failed |
 //! | `notes` | what was unusual, joined by `; ` | nothing was |
 //! | `input_sha256` | SHA-256 of the input | it was not read to its end |
-//! | `input_bytes` | its length | its header could not be read |
+//! | `input_bytes` | its length | its header could not be read, or does not tell the rate meant |
 //! | `input_encoding` | `pcm8` to `pcm32`, `float32`, `float64` | likewise |
-//! | `rate_hz` | sample rate | likewise |
+//! | `rate_hz` | sample rate that the spec's frequencies mean | likewise |
 //! | `channels` | number of channels | likewise |
 //! | `frames` | number of frames | likewise |
-//! | `seconds` | frames over rate | likewise |
+//! | `seconds` | frames over `rate_hz` | likewise |
 //! | `full_scale_runs` | runs of samples at full scale | it was not read to its end |
+//! | `time_expansion` | how many times the header's sample rate goes into `rate_hz` | its header could not be read, or does not tell the rate meant |
 //! | `output_path` | the output, relative to the output root | nothing was written |
 //! | `output_sha256` | SHA-256 of the output | likewise |
 //! | `output_bytes` | its length | likewise |
@@ -117,6 +118,7 @@ const RECORDING: &[(&str, OfRecording)] = &[
     ("frames", |r| number(r.input.as_ref()?.frames)),
     ("seconds", |r| number(r.input.as_ref()?.seconds)),
     ("full_scale_runs", |r| number(r.input.as_ref()?.full_scale_runs?)),
+    ("time_expansion", |r| number(r.input.as_ref()?.time_expansion)),
     ("output_path", |r| text(&r.output.as_ref()?.path)),
     ("output_sha256", |r| text(&r.output.as_ref()?.sha256)),
     ("output_bytes", |r| number(r.output.as_ref()?.bytes)),

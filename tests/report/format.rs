@@ -68,7 +68,7 @@ mirror! {
     }
     Input {
         sha256: Option<String>, bytes: u64, rate_hz: u32, channels: u16, encoding: String, frames: u64,
-        seconds: f64, full_scale_runs: Option<u64>,
+        seconds: f64, full_scale_runs: Option<u64>, time_expansion: f64,
     }
     Output {
         path: String, sha256: String, bytes: u64, encoding: String, peak_dbfs: Option<f64>, clipped_samples: u64,
@@ -171,7 +171,7 @@ fn keys_stand_in_their_fixed_order() {
     let design_band = "name from_hz to_hz require attenuation_min_db attenuation_max_db reaches_from_hz \
                        reaches_to_hz excepted_hz group_delay_s startup_s shortest_s check violation";
     let recording = "path status error notes input output chunks spectrum pair channels";
-    let input = "sha256 bytes rate_hz channels encoding frames seconds full_scale_runs";
+    let input = "sha256 bytes rate_hz channels encoding frames seconds full_scale_runs time_expansion";
     let output = "path sha256 bytes encoding peak_dbfs clipped_samples gain_db";
     let band = "name from_hz to_hz require before_dbfs before_floor_dbfs after_dbfs after_floor_dbfs \
                 measured_attenuation_db demonstrable_attenuation_db line_hz line_before_dbfs line_after_dbfs \

@@ -28,6 +28,7 @@ pub fn reduce(limit: f64) -> Option<Require> {
 pub fn spec(bands: &[(&str, Requirement)]) -> Spec {
     Spec {
         reference_band: None,
+        rate: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),
@@ -116,6 +117,7 @@ pub fn done(path: &str, channels: Vec<Vec<BandEntry>>) -> Recording {
             frames: 2_880_000,
             seconds: Seconds::of_frames(2_880_000, 48_000),
             full_scale_runs: Some(0),
+            time_expansion: finite(1.0),
         }),
         output: Some(OutputFile {
             path: path.to_owned(),

@@ -151,6 +151,33 @@ fn what_was_missed_is_listed_by_path_channel_and_place_in_the_spec() {
 }
 
 #[test]
+fn of_many_missed_or_failed_the_first_are_named_in_any_order_of_coming() {
+    let count = 2 * MOST_NAMED + 3;
+    let missed = |place: usize| {
+        let bands = ["zz", "aa"].map(|name| band(name, reduce(30.0), Some(MISSED)));
+        done(&format!("{place:05}.wav"), vec![bands.to_vec()])
+    };
+    let finished = |places: &mut dyn Iterator<Item = usize>| {
+        let mut builder = SummaryBuilder::new(&spec(&[("zz", reduce_30()), ("aa", reduce_30())])).unwrap();
+        for place in places {
+            builder.add(&missed(place));
+            builder.add(&Recording::failed(format!("{place:05}.bwf"), "empty"));
+        }
+        builder.finish(Skipped::default())
+    };
+    let (summary, highlights) = finished(&mut (0..count));
+    assert_eq!((summary.bands[0].missed, summary.failed), (count as u64, count as u64));
+    assert_eq!((highlights.missed.len(), highlights.failed.len()), (MOST_NAMED, MOST_NAMED));
+    assert_eq!(highlights.missed_more, (2 * count - MOST_NAMED) as u64);
+    assert_eq!(highlights.failed_more, (count - MOST_NAMED) as u64);
+    for (at, item) in highlights.missed.iter().enumerate() {
+        assert_eq!((item.path.clone(), item.band.as_str()), (format!("{:05}.wav", at / 2), ["zz", "aa"][at % 2]));
+    }
+    assert!(highlights.failed.iter().enumerate().all(|(at, item)| item.path == format!("{at:05}.bwf")));
+    assert_eq!(finished(&mut (0..count).rev()), (summary, highlights));
+}
+
+#[test]
 fn what_is_unproven_is_grouped_by_band_and_reason_and_counts_a_recording_once() {
     let mut builder = SummaryBuilder::new(&spec(&[("hum", reduce_30()), ("whine", reduce_30())])).unwrap();
     let unproven = |name: &str, code, reason: &str| BandEntry {

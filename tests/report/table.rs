@@ -8,7 +8,7 @@ use std::collections::BTreeMap;
 
 /// The header as it is published; a new column goes to the end of its group.
 const HEADER: &str = "path,status,error,notes,\
-    input_sha256,input_bytes,input_encoding,rate_hz,channels,frames,seconds,full_scale_runs,\
+    input_sha256,input_bytes,input_encoding,rate_hz,channels,frames,seconds,full_scale_runs,time_expansion,\
     output_path,output_sha256,output_bytes,output_encoding,output_peak_dbfs,clipped_samples,gain_db,\
     after_path,after_sha256,after_bytes,after_encoding,after_frames,after_full_scale_runs,\
     delay_frames,delay_source,max_delay_s,clock_ppm,clock_error_ppm,delay_scatter_s,inverted,overlap_frames,\
@@ -135,7 +135,7 @@ fn a_failed_recording_tells_what_is_known_of_it() {
     let known: Vec<String> = filled(empty);
     assert_eq!(known, ["error", "path", "status"]);
     let known: Vec<String> = filled(cut);
-    let mut expected: Vec<_> = HEADER.split(',').skip(4).take(8).chain(["error", "path", "status"]).collect();
+    let mut expected: Vec<_> = HEADER.split(',').skip(4).take(9).chain(["error", "path", "status"]).collect();
     expected.sort_unstable();
     assert_eq!(known, expected);
 }
@@ -156,7 +156,7 @@ fn expected(recording: &Recording, place: Option<(usize, usize)>) -> Row {
         put(key, &json[key]);
     }
     for (object, prefix, prefixed, keys) in [
-        ("input", "input_", "sha256 bytes encoding", "rate_hz channels frames seconds full_scale_runs"),
+        ("input", "input_", "sha256 bytes encoding", "rate_hz channels frames seconds full_scale_runs time_expansion"),
         ("output", "output_", "path sha256 bytes encoding peak_dbfs", "clipped_samples gain_db"),
         (
             "pair",
