@@ -7,12 +7,13 @@
 
 use super::bag_info::BagInfo;
 use super::manifest;
-use super::new_file::{Complete, NewFile};
+use super::new_file::{Complete, NewFile, Purpose};
 use super::payload::{Payload, files_below};
 use super::places::{below, folder_of, posix, real};
 use super::{Contents, Item, PackageError};
 use crate::files::digest;
 use std::borrow::Cow;
+use std::collections::HashSet;
 use std::fs;
 use std::io;
 use std::path::{Path, PathBuf};
@@ -27,7 +28,7 @@ const MANIFEST: &str = "manifest-sha256.txt";
 const INFO: &str = "bag-info.txt";
 /// Section 2.2.1.
 const TAG_MANIFEST: &str = "tagmanifest-sha256.txt";
-/// In the order in which they get their names.
+/// In the order in which they get their names, the declaration last.
 const TAG_FILES: [&str; 4] = [MANIFEST, INFO, TAG_MANIFEST, DECLARATION.0];
 
 /// The tag files.
@@ -58,11 +59,18 @@ pub fn check(contents: &Contents<'_>, paths: &mut dyn Iterator<Item = &Path>) ->
     not_among_originals(&bag, contents.input)?;
     report_in_payload(contents)?;
     table_has_its_own_name(contents, &bag)?;
+    // Before it writes there, a run removes what a killed one left half-written.
+    let documents = [Some(contents.report), contents.table].into_iter().flatten();
+    let mut cleaned: HashSet<PathBuf> = documents.map(folder_of).chain([output]).map(Path::to_path_buf).collect();
     for path in paths {
         posix(path).ok_or_else(|| PackageError::NotUtf8(path.into()))?;
+        cleaned.insert(folder_of(&output.join(path)).to_path_buf());
     }
     if output.exists() {
-        files_below(output).try_for_each(|found| found.map(drop))?;
+        files_below(output).try_for_each(|found| match found {
+            Err(PackageError::Leftover(path)) if cleaned.contains(folder_of(&path)) => Ok(()),
+            found => found.map(drop),
+        })?;
     }
     if bag.is_dir() {
         no_other_manifests(&bag)?;
@@ -127,23 +135,27 @@ fn is_manifest(name: &str) -> bool {
     name == "fetch.txt" || (begins && name.ends_with(".txt"))
 }
 
-/// See [`super::write`].
-pub fn write(
+/// The declaration, where it may be replaced.
+pub fn declaration_to_replace(contents: &Contents<'_>) -> Result<Vec<PathBuf>, PackageError> {
+    let bag = bag_folder(contents.output).ok_or_else(|| PackageError::NotNamedData(contents.output.into()))?;
+    if bag.is_dir() {
+        no_other_manifests(&bag)?;
+    }
+    Ok(vec![bag.join(DECLARATION.0)])
+}
+
+/// Renders the tag files, in the order in which they are to get their names.
+pub fn render(
     contents: &Contents<'_>,
     items: &mut dyn Iterator<Item = io::Result<Item>>,
-    temporary: &dyn Fn(&Path),
-) -> Result<(), PackageError> {
+    purpose: Purpose<'_>,
+) -> Result<Vec<Complete>, PackageError> {
     let output = contents.output;
     let bag = bag_folder(output).ok_or_else(|| PackageError::NotNamedData(output.into()))?;
     no_other_manifests(&bag)?;
-    if contents.replace {
-        // An earlier declaration would call the folder a bag with manifests that are
-        // not true any more.
-        remove_if_there(&bag.join(DECLARATION.0))?;
-    }
     let (mut payload_bytes, mut payload_files) = (0, 0);
-    let mut file = NewFile::begin(&bag.join(MANIFEST), temporary)?;
-    Payload::new(output, items).each(|found| {
+    let mut file = NewFile::begin(&bag.join(MANIFEST), purpose)?;
+    Payload::new(output, items, purpose).each(|found| {
         payload_bytes += found.digest.bytes;
         payload_files += 1;
         file.write(|out| manifest::write_line(out, &found.digest, &format!("{PAYLOAD}/{}", found.path)))
@@ -151,8 +163,8 @@ pub fn write(
     let manifest = file.complete()?;
     let Contents { title, started, .. } = *contents;
     let info = BagInfo { title, started, payload_bytes, payload_files }.text();
-    let info = whole(&bag.join(INFO), &info, temporary)?;
-    let declaration = whole(&bag.join(DECLARATION.0), DECLARATION.1, temporary)?;
+    let info = whole(&bag.join(INFO), &info, purpose)?;
+    let declaration = whole(&bag.join(DECLARATION.0), DECLARATION.1, purpose)?;
 
     let mut listed = vec![
         (INFO.to_owned(), info.digest.clone()),
@@ -161,12 +173,12 @@ pub fn write(
     ];
     listed.extend(tag_table(contents, &bag)?);
     listed.sort_by(|(left, _), (right, _)| left.cmp(right));
-    let mut file = NewFile::begin(&bag.join(TAG_MANIFEST), temporary)?;
+    let mut file = NewFile::begin(&bag.join(TAG_MANIFEST), purpose)?;
     for (path, digest) in &listed {
         file.write(|out| manifest::write_line(out, digest, path))?;
     }
     let tag_manifest = file.complete()?;
-    [manifest, info, tag_manifest, declaration].into_iter().try_for_each(|file| file.settle(contents.replace))
+    Ok(vec![manifest, info, tag_manifest, declaration])
 }
 
 /// The table, where it lies in the bag and not in the payload: a tag file of the user's
@@ -182,15 +194,8 @@ fn tag_table(contents: &Contents<'_>, bag: &Path) -> Result<Option<(String, dige
     Ok(Some((name, digest)))
 }
 
-fn whole(target: &Path, text: &str, temporary: &dyn Fn(&Path)) -> Result<Complete, PackageError> {
-    let mut file = NewFile::begin(target, temporary)?;
+fn whole(target: &Path, text: &str, purpose: Purpose<'_>) -> Result<Complete, PackageError> {
+    let mut file = NewFile::begin(target, purpose)?;
     file.write(|out| out.write_all(text.as_bytes()))?;
     file.complete()
-}
-
-fn remove_if_there(path: &Path) -> Result<(), PackageError> {
-    match fs::remove_file(path) {
-        Err(cause) if cause.kind() != io::ErrorKind::NotFound => Err(PackageError::Write { path: path.into(), cause }),
-        _ => Ok(()),
-    }
 }

@@ -6,7 +6,7 @@
 //! in a row within a name, so that readers of either can take it.
 
 use super::names::{ResourceNames, objection, package_name};
-use super::new_file::NewFile;
+use super::new_file::{Complete, NewFile, Purpose};
 use super::payload::still_there;
 use super::places::{below, folder_of, posix, real};
 use super::{Contents, Item, PackageError};
@@ -131,15 +131,15 @@ impl Kind {
     }
 }
 
-/// See [`super::write`].
-pub fn write(
+/// Renders the descriptor.
+pub fn render(
     contents: &Contents<'_>,
     items: &mut dyn Iterator<Item = io::Result<Item>>,
-    temporary: &dyn Fn(&Path),
-) -> Result<(), PackageError> {
+    purpose: Purpose<'_>,
+) -> Result<Vec<Complete>, PackageError> {
     let listed = Listed::new(contents)?;
     let mut names = ResourceNames::default();
-    let mut file = NewFile::begin(&folder_of(contents.report).join(DESCRIPTOR), temporary)?;
+    let mut file = NewFile::begin(&folder_of(contents.report).join(DESCRIPTOR), purpose)?;
     file.write(|out| write_head(out, contents))?;
     let read =
         |path: &Path| digest::of_file(path).map_err(|cause| PackageError::Unreadable { path: path.into(), cause });
@@ -151,14 +151,16 @@ pub fn write(
     }
     for item in items {
         let item = item.map_err(PackageError::Items)?;
-        still_there(contents.output, &item)?;
+        if purpose.outputs_must_be_there() {
+            still_there(contents.output, &item)?;
+        }
         let path = listed.output_path(&item.path)?;
         let digest = Digest { sha256: item.sha256, bytes: item.bytes };
         let recording = RECORDING.resource(names.assign(&path), &path, &digest);
         file.write(|out| write_next(out, &recording))?;
     }
     file.write(|out| out.write_all(b"\n  ]\n}\n"))?;
-    file.complete()?.settle(contents.replace)
+    Ok(vec![file.complete()?])
 }
 
 /// All that stands before the first resource.

@@ -1,9 +1,10 @@
 //! All that lies in the output folder: outputs of this run and whatever else is there.
 
+use super::new_file::Purpose;
 use super::places::posix;
 use super::{Item, PackageError};
 use crate::files::digest::{self, Digest};
-use crate::files::temporary::{JOURNAL_NAME, is_temporary_name};
+use crate::files::temporary::{is_run_name, is_temporary_name};
 use std::cmp::Ordering;
 use std::io;
 use std::iter::Peekable;
@@ -28,8 +29,8 @@ pub fn files_below(output: &Path) -> impl Iterator<Item = Result<(PathBuf, Strin
     let walk = WalkDir::new(output).min_depth(1).follow_links(false).sort_by(in_path_order);
     walk.into_iter().filter_map(move |entry| match entry {
         Ok(entry) if entry.file_type().is_dir() => None,
-        // The run's own list of finished outputs, which goes away at its end.
-        Ok(entry) if entry.depth() == 1 && entry.file_name() == JOURNAL_NAME => None,
+        // The run's own list of finished outputs and the like, which go away at its end.
+        Ok(entry) if entry.depth() == 1 && is_run_name(entry.file_name().as_encoded_bytes()) => None,
         Ok(entry) => Some(named(output, entry)),
         Err(error) => {
             let path = error.path().unwrap_or(output).to_path_buf();
@@ -84,50 +85,73 @@ pub fn still_there(output: &Path, item: &Item) -> Result<(), PackageError> {
 pub struct Payload<'a> {
     output: &'a Path,
     items: Peekable<&'a mut dyn Iterator<Item = io::Result<Item>>>,
+    purpose: Purpose<'a>,
 }
 
 impl<'a> Payload<'a> {
     /// `items` sorted by path as in [`super::write`].
-    pub fn new(output: &'a Path, items: &'a mut dyn Iterator<Item = io::Result<Item>>) -> Self {
-        Payload { output, items: items.peekable() }
+    pub fn new(output: &'a Path, items: &'a mut dyn Iterator<Item = io::Result<Item>>, purpose: Purpose<'a>) -> Self {
+        Payload { output, items: items.peekable(), purpose }
     }
 
-    /// Hands over every file of the payload, sorted by path.
+    /// Hands over every file of the payload, sorted by path. Where files are compared, the
+    /// outputs as the run left them count as the payload, whatever has become of them.
     pub fn each(mut self, mut take: impl FnMut(&PayloadFile) -> Result<(), PackageError>) -> Result<(), PackageError> {
         for found in files_below(self.output) {
-            let (place, path) = found?;
-            let digest = match self.item_at(&path)? {
+            let (place, path) = match found {
+                // It goes before anything is written.
+                Err(PackageError::Leftover(_)) if !self.purpose.outputs_must_be_there() => continue,
+                found => found?,
+            };
+            let digest = match self.item_at(Some(&path), &mut take)? {
                 Some(item) => Digest { sha256: item.sha256, bytes: item.bytes },
                 None => digest::of_file(&place).map_err(|cause| PackageError::Unreadable { path: place, cause })?,
             };
             take(&PayloadFile { path, digest })?;
         }
-        while self.next_checked()?.is_some() {}
-        Ok(())
+        self.item_at(None, &mut take).map(drop)
     }
 
-    /// The output at `path`, if this run made that file.
-    fn item_at(&mut self, path: &str) -> Result<Option<Item>, PackageError> {
+    /// The output at `path`, if this run made that file. The items before it (without a
+    /// path: all) are passed over.
+    fn item_at(
+        &mut self,
+        path: Option<&str>,
+        take: &mut impl FnMut(&PayloadFile) -> Result<(), PackageError>,
+    ) -> Result<Option<Item>, PackageError> {
         loop {
-            let order = match self.items.peek() {
-                Some(Ok(item)) => posix(&item.path).as_deref().map(|item| item.cmp(path)),
+            let name = match self.items.peek() {
+                Some(Ok(item)) => posix(&item.path),
                 Some(Err(_)) => None,
                 None => return Ok(None),
             };
+            let order = name.as_deref().zip(path).map(|(name, path)| name.cmp(path));
             match order {
                 Some(Ordering::Greater) => return Ok(None),
                 Some(Ordering::Equal) => return self.next_checked(),
                 // The walk has come past it: gone, or listed by the system under
                 // another spelling of its name, and then the walk's reading stands.
-                Some(Ordering::Less) | None => _ = self.next_checked()?,
+                Some(Ordering::Less) | None => {
+                    let Some(item) = self.next_checked()? else { continue };
+                    if let Some(path) = name.filter(|_| self.only_listed(&item)) {
+                        let digest = Digest { sha256: item.sha256, bytes: item.bytes };
+                        take(&PayloadFile { path, digest })?;
+                    }
+                }
             }
         }
+    }
+
+    fn only_listed(&self, item: &Item) -> bool {
+        !self.purpose.outputs_must_be_there() && self.output.join(&item.path).symlink_metadata().is_err()
     }
 
     fn next_checked(&mut self) -> Result<Option<Item>, PackageError> {
         let Some(item) = self.items.next() else { return Ok(None) };
         let item = item.map_err(PackageError::Items)?;
-        still_there(self.output, &item)?;
+        if self.purpose.outputs_must_be_there() {
+            still_there(self.output, &item)?;
+        }
         Ok(Some(item))
     }
 }

@@ -4,6 +4,7 @@ use bandproof::package::{self, Contents, Emit, Item, PackageError};
 use sha2::{Digest as _, Sha256};
 use std::cell::RefCell;
 use std::fs;
+use std::io;
 use std::path::{Path, PathBuf};
 use tempfile::TempDir;
 
@@ -17,6 +18,7 @@ pub struct Dataset {
     pub report: PathBuf,
     pub table: Option<PathBuf>,
     pub title: Option<&'static str>,
+    pub started: &'static str,
     pub replace: bool,
 }
 
@@ -33,6 +35,7 @@ impl Dataset {
             report: output.join("bandproof-report.json"),
             table: None,
             title: Some("Reed-bed recorders"),
+            started: STARTED,
             replace: false,
         };
         fs::write(&dataset.report, "{\"report\": \"bandproof\"}\n").unwrap();
@@ -94,6 +97,28 @@ impl Dataset {
         result
     }
 
+    /// Whether the package that is there was made of this dataset.
+    pub fn is_as_written(&self, emit: Emit) -> bool {
+        let before = listing(self.root.path());
+        let answer = self.is_as_written_of(emit, &mut self.items.iter().cloned().map(Ok)).unwrap();
+        assert_eq!(listing(self.root.path()), before, "looking changes nothing");
+        answer
+    }
+
+    /// The same, of other outputs.
+    pub fn is_as_written_of(
+        &self,
+        emit: Emit,
+        items: &mut dyn Iterator<Item = io::Result<Item>>,
+    ) -> Result<bool, PackageError> {
+        let (input, output) = (self.root.path().join("originals"), self.output());
+        package::is_as_written(emit, &self.contents(&input, &output), items)
+    }
+
+    pub fn take_back(&self, emit: Emit, is_as_written: bool) -> Result<(), PackageError> {
+        package::take_back(emit, &self.contents(&self.root.path().join("originals"), &self.output()), is_as_written)
+    }
+
     pub fn files(&self, emit: Emit) -> Vec<PathBuf> {
         package::files(emit, &self.contents(self.root.path(), &self.output()))
     }
@@ -105,7 +130,7 @@ impl Dataset {
             report: &self.report,
             table: self.table.as_deref(),
             title: self.title,
-            started: STARTED,
+            started: self.started,
             replace: self.replace,
         }
     }
