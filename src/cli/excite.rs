@@ -9,6 +9,7 @@ use super::screen::{complain, print, print_document};
 use bandproof::excite::file::{Placing, check, save};
 use bandproof::excite::{ExciteError, Plan};
 use bandproof::spec;
+use std::sync::Arc;
 
 /// Runs the command.
 pub fn run(arguments: &ExciteArgs) -> Exit {
@@ -19,13 +20,11 @@ pub fn run(arguments: &ExciteArgs) -> Exit {
             return Exit::Refused;
         }
     };
-    let interrupt = match Interrupt::watch() {
-        Ok(interrupt) => interrupt,
-        Err(error) => {
-            complain(&format!("interrupts can't be listened for: {error}"));
-            return Exit::Refused;
-        }
-    };
+    let interrupt = Arc::new(Interrupt::default());
+    if let Err(error) = interrupt.watch() {
+        complain(&format!("interrupts can't be listened for: {error}"));
+        return Exit::Refused;
+    }
     let placing = Placing {
         spec_path: Some(&arguments.spec),
         replace: arguments.replace,

@@ -1,7 +1,7 @@
 //! Ctrl-C and a polite end from outside.
 
 use super::Exit;
-use signal_hook::consts::{SIGINT, SIGTERM};
+use signal_hook::consts::{SIGINT, SIGTERM, SIGXFSZ};
 use signal_hook::iterator::Signals;
 use std::fs;
 use std::io;
@@ -11,10 +11,12 @@ use std::sync::{Arc, Mutex, PoisonError};
 
 /// What the first SIGINT or SIGTERM sets, and what the second takes away before it ends
 /// the program.
-#[derive(Debug, Default)]
+#[derive(Default)]
 pub struct Interrupt {
     asked: AtomicBool,
     temporary: Mutex<Vec<PathBuf>>,
+    /// Tells the user that the first one was heard.
+    answer: Mutex<Option<Box<dyn Fn() + Send>>>,
 }
 
 impl Interrupt {
@@ -23,10 +25,9 @@ impl Interrupt {
     ///
     /// # Errors
     /// The system does not take the handlers.
-    pub fn watch() -> io::Result<Arc<Self>> {
-        let interrupt = Arc::new(Interrupt::default());
+    pub fn watch(self: &Arc<Self>) -> io::Result<()> {
         let mut signals = Signals::new([SIGINT, SIGTERM])?;
-        let heard = Arc::clone(&interrupt);
+        let heard = Arc::clone(self);
         std::thread::Builder::new().name("signals".into()).spawn(move || {
             for _ in signals.forever() {
                 if heard.asked.swap(true, Ordering::Relaxed) {
@@ -35,9 +36,17 @@ impl Interrupt {
                     remove(&files);
                     std::process::exit(Exit::Interrupted.code().into());
                 }
+                if let Some(answer) = &*heard.answer.lock().unwrap_or_else(PoisonError::into_inner) {
+                    answer();
+                }
             }
         })?;
-        Ok(interrupt)
+        Ok(())
+    }
+
+    /// What is to be done at once when the first signal comes, in the thread that hears it.
+    pub fn answer_with(&self, answer: impl Fn() + Send + 'static) {
+        *self.answer.lock().unwrap_or_else(PoisonError::into_inner) = Some(Box::new(answer));
     }
 
     /// Whether the run is to end early.
@@ -52,6 +61,15 @@ impl Interrupt {
         files.retain(|file| file.exists());
         files.push(path.to_path_buf());
     }
+}
+
+/// Lets writing beyond a limit on the size of files be an error of that file: the signal
+/// that comes with it would end the program.
+///
+/// # Errors
+/// The system does not take the handler.
+pub fn outlive_file_size_limit() -> io::Result<()> {
+    signal_hook::flag::register(SIGXFSZ, Arc::default()).map(drop)
 }
 
 fn remove(files: &[PathBuf]) {

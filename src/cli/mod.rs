@@ -27,7 +27,7 @@ use args::{Cli, Command};
 use clap::Parser;
 use clap::error::ErrorKind;
 pub use exit::Exit;
-use screen::{complain_of_usage, print, show_help};
+use screen::{complain, complain_of_usage, print, show_help};
 use std::ffi::OsString;
 
 /// Width that no line of a table or summary exceeds unless a single word does.
@@ -35,6 +35,10 @@ const WIDTH: usize = 100;
 
 /// Runs the command that `arguments` ask for, the program's name first.
 pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Exit {
+    if let Err(error) = interrupt::outlive_file_size_limit() {
+        complain(&format!("a limit on the size of files can't be listened for: {error}"));
+        return Exit::Refused;
+    }
     match Cli::try_parse_from(arguments) {
         Ok(Cli { command: Command::Filter(arguments) }) => filter::run(&arguments),
         Ok(Cli { command: Command::Design(arguments) }) => design::run(&arguments),

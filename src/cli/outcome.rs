@@ -3,7 +3,6 @@
 
 use super::args::CommonArgs;
 use super::exit::Exit;
-use super::interrupt::Interrupt;
 use super::progress::Meter;
 use super::screen::{complain, print, print_with};
 use super::summary_text;
@@ -23,16 +22,16 @@ pub fn load_spec(path: &Path) -> Result<SpecFile, Exit> {
 
 /// Runs `work` under a progress line that goes away in the end; complains of its error.
 pub fn metered(common: &CommonArgs, work: impl FnOnce(&Meter) -> Result<Outcome, JobError>) -> Result<Outcome, Exit> {
-    let interrupt = Interrupt::watch().map_err(|error| {
-        complain(&format!("interrupts can't be listened for: {error}"));
-        Exit::Refused
-    })?;
-    let meter = Meter::new(common.quiet, interrupt);
+    let meter = Meter::new(common.quiet, "what is in work is dropped, the report will say what was done")?;
     let result = work(&meter);
     meter.clear();
     result.map_err(|error| {
         complain(&error.to_string());
-        if error.is_refusal() { Exit::Refused } else { Exit::Failed }
+        match error {
+            JobError::Interrupted(_) => Exit::Interrupted,
+            error if error.is_refusal() => Exit::Refused,
+            _ => Exit::Failed,
+        }
     })
 }
 

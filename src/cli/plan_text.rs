@@ -35,6 +35,7 @@ fn planned(recording: &PlannedRecording) -> Value {
         "frames": recording.frames,
         "problem": recording.problem,
         "fails": recording.fails,
+        "kept": recording.kept,
     })
 }
 
@@ -43,7 +44,7 @@ pub fn text(job: &FilterJob, outcome: &Outcome, plan: &DryRun, palette: Palette)
     let mut text = outcome.designs.iter().map(|design| design_text::text(design, palette)).collect::<String>();
     // Paths stand last, where a long one stays whole and can be copied.
     let mut table = Table::new([("Rate Hz", true), ("length", true), ("recording", false)]);
-    for recording in plan.recordings.iter().filter(|recording| !recording.fails) {
+    for recording in plan.recordings.iter().filter(|recording| !recording.fails && !recording.kept) {
         let length = match (recording.frames, recording.rate_hz) {
             (Some(frames), Some(rate_hz)) if rate_hz > 0 => seconds(frames as f64 / f64::from(rate_hz)),
             _ => "-".to_owned(),
@@ -64,10 +65,14 @@ pub fn text(job: &FilterJob, outcome: &Outcome, plan: &DryRun, palette: Palette)
             text.push_str(&wrapped(&format!("{path}: {problem}"), 2, 6, WIDTH));
         }
     }
-    let good = plan.recordings.iter().filter(|recording| !recording.fails).count() as u64;
+    let good = plan.recordings.iter().filter(|recording| !recording.fails && !recording.kept).count() as u64;
+    let kept = match outcome.kept {
+        0 => String::new(),
+        kept => format!(", {} kept from an earlier run", counted(kept, "output")),
+    };
     let looked = if job.scan { "every recording was read" } else { "only headers were read, --scan reads all" };
     let looked = if outcome.complete { looked } else { "interrupted, some were not looked at" };
-    let end = format!("Dry run, nothing written: {} would be filtered; {looked}.", counted(good, "recording"));
+    let end = format!("Dry run, nothing written: {} would be filtered{kept}; {looked}.", counted(good, "recording"));
     text + "\n" + &wrapped(&end, 0, 0, WIDTH)
 }
 
@@ -85,6 +90,7 @@ mod tests {
             frames: problem.is_none().then_some(2_880_000),
             problem: problem.map(str::to_owned),
             fails: problem.is_some(),
+            kept: false,
         }
     }
 
@@ -118,7 +124,8 @@ mod tests {
             seconds: 0.1,
             bytes_read: 0,
             complete: true,
-            not_begun: 0,
+            kept: 0,
+            not_done: 0,
             dry: None,
         };
         let plan = DryRun { recordings: vec![planned("pier-1/0001.wav", None), planned("pier-2/0001.wav", problem)] };

@@ -1,5 +1,6 @@
 //! How far a run is, on stderr while that is a terminal.
 
+use super::exit::Exit;
 use super::interrupt::Interrupt;
 use super::screen::complain;
 use super::table::printable;
@@ -10,22 +11,19 @@ use std::fmt::{self, Write};
 use std::io::{IsTerminal, stderr};
 use std::path::Path;
 use std::sync::Arc;
-use std::sync::atomic::{AtomicBool, Ordering};
 
 /// A line that counts finished bytes; failed recordings are named above it.
-#[derive(Debug)]
 pub struct Meter {
     bar: ProgressBar,
     /// Knows whether the run is to end early.
     interrupt: Arc<Interrupt>,
-    /// Whether the user has been told that it will.
-    answered: AtomicBool,
 }
 
 impl Meter {
-    /// A meter that shows itself only on a terminal, and never if `quiet`, and ends
-    /// the run early once `interrupt` says so.
-    pub fn new(quiet: bool, interrupt: Arc<Interrupt>) -> Self {
+    /// A meter that shows itself only on a terminal, and never if `quiet`, and ends the run
+    /// early once the user interrupts it; `left` says what comes of the run then. Complains
+    /// where interrupts can't be listened for.
+    pub fn new(quiet: bool, left: &'static str) -> Result<Self, Exit> {
         let shown = !quiet && stderr().is_terminal();
         let target = if shown { ProgressDrawTarget::stderr_with_hz(5) } else { ProgressDrawTarget::hidden() };
         let bar = ProgressBar::with_draw_target(Some(0), target);
@@ -38,7 +36,16 @@ impl Meter {
                     .progress_chars("=> "),
             );
         }
-        Meter { bar, interrupt, answered: AtomicBool::new(false) }
+        let interrupt = Arc::new(Interrupt::default());
+        let line = bar.clone();
+        interrupt.answer_with(move || {
+            line.suspend(|| complain(&format!("interrupted: {left}; interrupt again to leave at once")));
+        });
+        interrupt.watch().map_err(|error| {
+            complain(&format!("interrupts can't be listened for: {error}"));
+            Exit::Refused
+        })?;
+        Ok(Meter { bar, interrupt })
     }
 
     /// Takes the line away.
@@ -70,7 +77,13 @@ fn reckon(done: u64, all: u64, elapsed_s: f64) -> Option<(f64, f64)> {
 }
 
 impl Progress for Meter {
+    fn checking(&self, bytes: u64) {
+        self.bar.set_length(bytes);
+        self.bar.reset_elapsed();
+    }
+
     fn planned(&self, _recordings: u64, bytes: u64) {
+        self.bar.set_position(0);
         self.bar.set_length(bytes);
         // Designs and the witness came before; they say nothing of the pace.
         self.bar.reset_elapsed();
@@ -78,10 +91,6 @@ impl Progress for Meter {
 
     fn advanced(&self, bytes: u64) {
         self.bar.inc(bytes);
-        if self.interrupted() && !self.answered.swap(true, Ordering::Relaxed) {
-            let answer = "interrupted: recordings in work are finished first; interrupt again to stop at once";
-            self.bar.suspend(|| complain(answer));
-        }
     }
 
     fn finished(&self, path: &str, failed: Option<&str>) {

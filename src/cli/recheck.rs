@@ -2,7 +2,6 @@
 
 use super::args::RecheckArgs;
 use super::exit::Exit;
-use super::interrupt::Interrupt;
 use super::progress::Meter;
 use super::recheck_text;
 use super::screen::{complain, print, print_document};
@@ -22,14 +21,10 @@ pub fn run(arguments: &RecheckArgs) -> Exit {
         replace: arguments.replace,
         jobs: arguments.common.threads(),
     };
-    let interrupt = match Interrupt::watch() {
-        Ok(interrupt) => interrupt,
-        Err(error) => {
-            complain(&format!("interrupts can't be listened for: {error}"));
-            return Exit::Refused;
-        }
+    let meter = match Meter::new(arguments.common.quiet, "files in work are left out") {
+        Ok(meter) => meter,
+        Err(exit) => return exit,
     };
-    let meter = Meter::new(arguments.common.quiet, interrupt);
     let result = recheck::run(&job, &meter);
     meter.clear();
     match result {

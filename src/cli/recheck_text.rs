@@ -4,7 +4,7 @@ use super::WIDTH;
 use super::color::{Palette, Style};
 use super::table::{Table, wrapped};
 use super::units::{bytes, counted, trimmed};
-use bandproof::recheck::{AgainCounts, Disagreement, FileCounts, Findings, Recordings, Side};
+use bandproof::recheck::{AgainCounts, Command, Disagreement, FileCounts, Findings, Recordings, Side};
 use bandproof::report::Verdict;
 
 /// Digits of a hash that tell two apart at a glance; all of them stand in the JSON.
@@ -30,11 +30,6 @@ fn head(findings: &Findings) -> String {
         bytes(read),
     );
     let mut text = wrapped(&line, 0, 0, WIDTH);
-    if !findings.report_complete {
-        let line = "The report is not complete: the run that wrote it was interrupted, and recordings that it had not \
-                    begun are not in it.";
-        text.push_str(&wrapped(line, 0, 0, WIDTH));
-    }
     if !findings.finished {
         text.push_str(&wrapped("Interrupted: what follows leaves recordings out.", 0, 0, WIDTH));
     }
@@ -103,7 +98,7 @@ fn lists(findings: &Findings, palette: Palette) -> Vec<String> {
     ];
     let mut lists: Vec<String> = HEADINGS.iter().map(|_| String::new()).collect();
     for disagreement in &findings.disagreements {
-        let (place, line) = told(disagreement);
+        let (place, line) = told(disagreement, findings.command);
         lists[place].push_str(&wrapped(&line, 2, 6, WIDTH));
     }
     let headed = HEADINGS.iter().zip(lists).filter(|(_, list)| !list.is_empty());
@@ -120,8 +115,11 @@ fn lists(findings: &Findings, palette: Palette) -> Vec<String> {
 }
 
 /// The list a disagreement belongs to, and its line there.
-fn told(disagreement: &Disagreement) -> (usize, String) {
+fn told(disagreement: &Disagreement, command: Command) -> (usize, String) {
     match disagreement {
+        Disagreement::Incomplete { inputs_not_listed, outputs_not_listed } => {
+            (0, incomplete(*inputs_not_listed, *outputs_not_listed, command))
+        }
         Disagreement::Report { what } => (0, what.clone()),
         Disagreement::Design { rate_hz, what } => (0, format!("at {rate_hz} Hz: {what}")),
         Disagreement::Changed { path, side, bytes_then, bytes_now, sha256_then, sha256_now } => {
@@ -161,6 +159,15 @@ fn told(disagreement: &Disagreement) -> (usize, String) {
         }
         Disagreement::Entry { path, what } => (5, format!("{path}: {what}")),
     }
+}
+
+fn incomplete(inputs: Option<u64>, outputs: u64, command: Command) -> String {
+    let inputs = inputs.map_or(String::new(), |count| format!("{} and ", counted(count, "input")));
+    let repair = match command {
+        Command::Filter => "run the same command again, and it goes on from there",
+        Command::Measure => "measure again, with --replace",
+    };
+    format!("it is of an interrupted run, and {inputs}{} are not in it yet: {repair}", counted(outputs, "output"))
 }
 
 fn word(side: Side) -> &'static str {

@@ -1,14 +1,17 @@
 //! The two streams: what was asked for goes to stdout, errors go to stderr.
 
 use super::Exit;
+use super::table::printable;
 use std::io::{self, Write, stderr, stdout};
 
 /// Writes `bandproof: ` and a sentence to stderr, each line of several with the name.
+/// Control characters are escaped: an error may name a file, whose name must not steer the
+/// terminal.
 pub fn complain(sentences: &str) {
     let mut err = stderr().lock();
     for line in sentences.lines() {
         // Nobody is left to tell if stderr itself is gone.
-        let _ = writeln!(err, "bandproof: {line}");
+        let _ = writeln!(err, "bandproof: {}", printable(line));
     }
 }
 

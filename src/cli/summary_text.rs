@@ -6,8 +6,8 @@ use super::units::{bytes, counted, seconds, trimmed};
 use super::{WIDTH, names, pairs_text};
 use bandproof::job::Outcome;
 use bandproof::report::{
-    BandSummary, Db, DesignBand, DesignEntry, MissedItem, NotFinite, ReasonCode, Require, Summary, UnprovenItem,
-    Verdict,
+    BandSummary, Db, DesignBand, DesignEntry, Highlights, MissedItem, NotFinite, ReasonCode, Require, Summary,
+    UnprovenItem, Verdict,
 };
 use bandproof::spec::Spec;
 use std::collections::HashMap;
@@ -23,7 +23,7 @@ pub fn text(spec: &Spec, outcome: &Outcome, palette: Palette) -> String {
         outcome.summary.unpaired.as_ref().map_or(String::new(), |one_sided| pairs_text::unpaired(one_sided, palette)),
         outcome.highlights.pairs.as_ref().map_or(String::new(), |pairs| pairs_text::alignment(pairs, palette)),
         bands(&outcome.summary, &requirements, palette),
-        missed(&outcome.highlights.missed, palette),
+        missed(&outcome.highlights.missed, outcome.highlights.missed_more, palette),
         level_as_a_whole(spec, outcome),
         failed(outcome, palette),
         unproven(outcome, palette),
@@ -56,7 +56,7 @@ fn measured_pairs(outcome: &Outcome) -> bool {
 
 fn done(outcome: &Outcome) -> String {
     let Summary { recordings, done, failed, skipped, .. } = &outcome.summary;
-    let rate = if outcome.seconds > 0.0 {
+    let rate = if outcome.seconds > 0.0 && outcome.bytes_read > 0 {
         format!(", {} a second", bytes((outcome.bytes_read as f64 / outcome.seconds) as u64))
     } else {
         String::new()
@@ -66,16 +66,24 @@ fn done(outcome: &Outcome) -> String {
         true => ("pair", "measured", "passed over"),
         false => ("recording", "filtered and measured", "not copied"),
     };
+    let read = match (outcome.kept, outcome.bytes_read) {
+        (1.., 0) => "nothing left to do, found".to_owned(),
+        (_, read) => format!("{} read", bytes(read)),
+    };
+    let kept = match outcome.kept {
+        0 => String::new(),
+        kept => format!(", {kept} by an earlier run (input and output unchanged)"),
+    };
     let first = format!(
-        "{done} of {} {treated}{failed}: {} read in {}{rate}.",
+        "{done} of {} {treated}{kept}{failed}: {read} in {}{rate}.",
         counted(*recordings, what),
-        bytes(outcome.bytes_read),
         seconds(outcome.seconds),
     );
     let mut text = wrapped(&first, 0, 0, WIDTH);
     if !outcome.complete {
-        let others = counted(outcome.not_begun, what);
-        let line = format!("Interrupted with {others} not begun: what follows leaves them out.");
+        let others = counted(outcome.not_done, what);
+        let go_on = if measured_pairs(outcome) { "" } else { " The same command again does the rest." };
+        let line = format!("Interrupted with {others} not done: what follows leaves them out.{go_on}");
         text.push_str(&wrapped(&line, 0, 0, WIDTH));
     }
     let mut left = Vec::new();
@@ -87,6 +95,16 @@ fn done(outcome: &Outcome) -> String {
     }
     if !left.is_empty() {
         text.push_str(&wrapped(&format!("{}.", left.join(", ")), 0, 0, WIDTH));
+    }
+    let Highlights { noted, first_noted, .. } = &outcome.highlights;
+    if let Some(first) = first_noted {
+        let which = if *noted == 1 { first.clone() } else { format!("the first of them {first}") };
+        let line = format!(
+            "The report has notes on {} that {} done: {which}.",
+            counted(*noted, what),
+            if *noted == 1 { "is" } else { "are" }
+        );
+        text.push_str(&wrapped(&line, 0, 0, WIDTH));
     }
     text
 }
@@ -146,7 +164,7 @@ fn heading(text: &str, style: Style, palette: Palette) -> String {
     format!("{}\n", palette.paint(style, text))
 }
 
-fn missed(items: &[MissedItem], palette: Palette) -> String {
+fn missed(items: &[MissedItem], more: u64, palette: Palette) -> String {
     if items.is_empty() {
         return String::new();
     }
@@ -161,7 +179,13 @@ fn missed(items: &[MissedItem], palette: Palette) -> String {
         let line = format!("{path}, channel {channel}, {bands}: {}{reason}", shortfall(first.require, row));
         text.push_str(&wrapped(&line, 2, 6, WIDTH));
     }
+    text.push_str(&and_more(more));
     text
+}
+
+/// How many are not named.
+fn and_more(more: u64) -> String {
+    if more == 0 { String::new() } else { wrapped(&format!("and {more} more: see the report"), 2, 6, WIDTH) }
 }
 
 /// A device that only changes the level misses every keep band: what to do about that.
@@ -211,6 +235,7 @@ fn failed(outcome: &Outcome, palette: Palette) -> String {
     for item in items {
         text.push_str(&wrapped(&format!("{}: {}", item.path, item.error), 2, 6, WIDTH));
     }
+    text.push_str(&and_more(outcome.highlights.failed_more));
     text
 }
 

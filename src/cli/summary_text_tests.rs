@@ -51,7 +51,8 @@ fn outcome(recordings: &[Recording], rates: &[u32]) -> Outcome {
         seconds: 12.4,
         bytes_read: 1_240_000_000,
         complete: true,
-        not_begun: 0,
+        kept: 0,
+        not_done: 0,
         dry: None,
     }
 }
@@ -165,8 +166,8 @@ fn a_run_in_which_all_went_well_is_short() {
 fn an_interrupted_run_says_that_it_is_not_all() {
     let whole = outcome(&mixed(), &[48_000]);
     assert!(!text(&spec(), &whole, Palette::OFF).contains("Interrupted"));
-    let part = Outcome { complete: false, not_begun: 9, ..whole };
-    assert!(text(&spec(), &part, Palette::OFF).contains("\nInterrupted with 9 recordings not begun"));
+    let part = Outcome { complete: false, not_done: 9, ..whole };
+    assert!(text(&spec(), &part, Palette::OFF).contains("\nInterrupted with 9 recordings not done"));
 }
 
 #[test]
@@ -200,6 +201,7 @@ fn no_length_is_asked_for_that_a_recording_has() {
             frames: 48_000 * seconds,
             seconds: bandproof::report::Seconds::of_frames(48_000 * seconds, 48_000),
             full_scale_runs: Some(0),
+            time_expansion: bandproof::report::Finite::try_from(1.0).unwrap(),
         });
         text(&spec(), &outcome(&[one], &[48_000]), Palette::OFF)
     };

@@ -31,6 +31,10 @@ impl Progress for Counted<'_> {
         self.inner.advanced(bytes);
     }
 
+    fn checking(&self, bytes: u64) {
+        self.inner.checking(bytes);
+    }
+
     fn finished(&self, path: &str, failed: Option<&str>) {
         self.inner.finished(path, failed);
     }

@@ -51,11 +51,16 @@ pub fn discover(input: &Path, include: &[String], exclude: &[String]) -> Result<
         match entry {
             Ok(entry) if entry.file_type().is_dir() => {}
             Ok(entry) => discovered.sort_in(input, &entry, &patterns),
+            // Nothing at all can be found then.
+            Err(error) if error.depth() == 0 => {
+                return Err(JobError::Input { path: input.into(), cause: error.into() });
+            }
             Err(error) => {
                 let path = error.path().unwrap_or(input);
                 let relative = path.strip_prefix(input).unwrap_or(path).to_path_buf();
-                let why = error.io_error().map_or_else(|| error.to_string(), ToString::to_string);
-                discovered.unreadable.push((relative, format!("can't be looked into: {why}; see to its permissions")));
+                let cause = error.io_error().map_or_else(|| error.to_string(), ToString::to_string);
+                let why = format!("can't be looked into: {cause}; nothing below it was done: see to its permissions");
+                discovered.unreadable.push((relative, why));
             }
         }
     }

@@ -4,6 +4,7 @@ use super::journal::Journal;
 use super::{JobError, Progress};
 use crate::files::temporary;
 use crate::report::{Head, Recording, Summary, TableWriter, write_report};
+use std::fs::File;
 use std::io::{self, BufWriter, Write};
 use std::path::{Path, PathBuf};
 use tempfile::NamedTempFile;
@@ -41,14 +42,23 @@ impl Documents {
         Ok(documents)
     }
 
-    /// Writes both from the journal and gives them their names.
+    /// Writes both from the journal and gives them their names; `replace` says in whose
+    /// place a file may come.
     ///
     /// # Errors
     /// [`JobError::Record`].
-    pub fn finish(self, replace: bool, head: &Head, journal: &Journal, summary: &Summary) -> Result<(), JobError> {
+    pub fn finish(
+        self,
+        replace: &dyn Fn(&Path) -> bool,
+        head: &Head,
+        journal: &Journal,
+        summary: &Summary,
+    ) -> Result<(), JobError> {
         if let Some(table) = self.table {
+            let replace = replace(&table.target);
             table.finish(replace, |out| write_table(out, journal))?;
         }
+        let replace = replace(&self.report.target);
         self.report.finish(replace, |out| write_report(out, head, journal.sorted(), summary))
     }
 }
@@ -85,7 +95,7 @@ impl Document {
     pub fn finish(
         self,
         replace: bool,
-        write: impl FnOnce(&mut BufWriter<NamedTempFile>) -> io::Result<()>,
+        write: impl FnOnce(&mut BufWriter<&File>) -> io::Result<()>,
     ) -> Result<(), JobError> {
         let Document { what, file, target } = self;
         write_whole(file, &target, replace, write).map_err(|cause| JobError::Record { what, path: target, cause })
@@ -96,12 +106,11 @@ fn write_whole(
     file: NamedTempFile,
     target: &Path,
     replace: bool,
-    write: impl FnOnce(&mut BufWriter<NamedTempFile>) -> io::Result<()>,
+    write: impl FnOnce(&mut BufWriter<&File>) -> io::Result<()>,
 ) -> io::Result<()> {
-    let mut out = BufWriter::with_capacity(BUFFER_BYTES, file);
+    // The file itself: errors of the temporary file name it, which would mean nothing.
+    let mut out = BufWriter::with_capacity(BUFFER_BYTES, file.as_file());
     write(&mut out)?;
-    out.flush()?;
-    let file = out.into_inner().map_err(io::IntoInnerError::into_error)?;
-    file.as_file().sync_all()?;
+    out.into_inner().map_err(io::IntoInnerError::into_error)?.sync_all()?;
     temporary::settle(file, target, replace)
 }

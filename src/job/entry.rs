@@ -55,6 +55,7 @@ pub(super) fn input_entry(header: &Header, sha256: Option<String>, full_scale_ru
         frames: header.frames,
         seconds: Seconds::of_frames(header.frames, header.rate_hz),
         full_scale_runs,
+        time_expansion: Finite::ratio(header.rate_hz, header.header_rate_hz),
     }
 }
 

@@ -1,6 +1,6 @@
 //! Why a run can't start or can't end.
 
-use super::{NoiseError, RecordingError};
+use super::{Interrupted, NoiseError, RecordingError};
 use crate::design::DesignError;
 use crate::package::PackageError;
 use std::io;
@@ -44,6 +44,17 @@ pub enum JobError {
         input: PathBuf,
         /// `the same as` or `inside`.
         relation: &'static str,
+    },
+    /// A link inside OUT leads out of it.
+    #[error(
+        "{folder} leads out of the output folder, to {place}: nothing is written through a link to where it might \
+         overwrite another's files; remove the link, or give that folder as the output of a run of its own"
+    )]
+    OutputLeadsElsewhere {
+        /// As it would be written to.
+        folder: PathBuf,
+        /// Where it really is.
+        place: PathBuf,
     },
     /// OUT exists and is no folder.
     #[error("the output {0} is a file: give a folder, which is made if it does not exist")]
@@ -107,15 +118,50 @@ pub enum JobError {
     NotAFile(PathBuf),
     /// Outputs or the report exist already.
     #[error(
-        "{first} exists already{}: give --replace to overwrite, or choose another place",
-        others(*count)
+        "{first} exists already{}{}: give --replace to overwrite, or choose another place",
+        others(*count),
+        why(reason.as_deref())
     )]
     Exists {
         /// How many.
         count: usize,
         /// The first in path order.
         first: PathBuf,
+        /// Why it does not count as written by an earlier run of the same job, if that can
+        /// be said.
+        reason: Option<String>,
     },
+    /// What an earlier run left can't be read.
+    #[error("{path}, which an earlier run left, can't be read: {cause}; see to its permissions, or remove it")]
+    Earlier {
+        /// The journal.
+        path: PathBuf,
+        /// The system's reason.
+        cause: io::Error,
+    },
+    /// A killed run was of more recordings.
+    #[error(
+        "{path} is of a run that was broken off and did also {recording}, which is not part of this one: finish that run \
+         first, or give --replace to forget it"
+    )]
+    OtherJournal {
+        /// The journal.
+        path: PathBuf,
+        /// A recording in it.
+        recording: String,
+    },
+    /// Another run writes into OUT.
+    #[error("another run is writing into {0}: wait until it has ended, or choose another folder")]
+    Busy(PathBuf),
+    /// A package lists files that the run would replace, and is not made anew.
+    #[error(
+        "{0} belongs to a package that lists what this run would replace: give --emit as in the run that made it, \
+         or --replace to let it go out of date"
+    )]
+    Packaged(PathBuf),
+    /// The user asked for an end before anything was written.
+    #[error("interrupted before anything was written")]
+    Interrupted(#[from] Interrupted),
     /// A folder or the report's place can't be written to.
     #[error("{what} {path} can't be written: {cause}; choose a place that exists and that you may write to")]
     NotWritable {
@@ -190,6 +236,11 @@ fn others(count: usize) -> String {
         2 => " and so does one other file to be written".to_owned(),
         _ => format!(" and so do {} other files to be written", count - 1),
     }
+}
+
+/// The reason in brackets.
+fn why(reason: Option<&str>) -> String {
+    reason.map(|reason| format!(" ({reason})")).unwrap_or_default()
 }
 
 impl JobError {

@@ -21,10 +21,22 @@ pub(crate) enum Failure {
     Open(io::Error),
     #[error("its output can't be written: {0}; see to the folder's permissions and the room on the disk")]
     Write(io::Error),
+    #[error(
+        "its output can't be written: the disk takes its name for that of another output of this run; rename one of \
+         the two recordings, or choose another output folder"
+    )]
+    Taken,
     #[error("a figure came out as no number ({0}); this is a defect of this program")]
     Figure(#[from] NotFinite),
     #[error("processing stopped with a defect of this program: {0}")]
     Panic(String),
+}
+
+impl Failure {
+    /// Whether the recording was only given up because the user asked for an end.
+    pub(crate) fn is_interruption(&self) -> bool {
+        matches!(self, Failure::Recording(RecordingError::Interrupted(_)) | Failure::Pair(PairError::Interrupted(_)))
+    }
 }
 
 impl From<WaveError> for Failure {

@@ -8,9 +8,11 @@
 
 mod batch;
 mod collector;
+mod collide;
 mod counted;
 pub(crate) mod discover;
 pub(crate) mod documents;
+mod earlier;
 mod entry;
 mod error;
 pub(crate) mod failure;
@@ -27,6 +29,7 @@ mod record;
 pub mod recording;
 mod scan;
 mod segments;
+mod settled;
 pub(crate) mod sink;
 pub mod witness;
 
@@ -41,6 +44,14 @@ pub use recording::RecordingError;
 use std::path::{Path, PathBuf};
 use std::time::Instant;
 
+/// Work was given up because the user asked for an end.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, thiserror::Error)]
+#[error("interrupted")]
+pub struct Interrupted;
+
+/// Hears how many bytes of samples went through, block by block, and says whether to go on.
+pub type Pass<'a> = dyn Fn(u64) -> Result<(), Interrupted> + Sync + 'a;
+
 /// Hears how a run goes. Called from all threads.
 pub trait Progress: Sync {
     /// The plan is made; this many recordings and bytes of samples are to be done.
@@ -49,10 +60,22 @@ pub trait Progress: Sync {
     fn advanced(&self, bytes: u64);
     /// A recording ended; `failed` says why it could not be processed.
     fn finished(&self, path: &str, failed: Option<&str>);
-    /// Asked before each recording is begun: once true, no more are, and the report
-    /// says that it is not complete.
+    /// What an earlier run left is being read to see what of it can be kept: so many
+    /// bytes, of which [`Self::advanced`] will hear.
+    fn checking(&self, _bytes: u64) {}
+    /// Asked before each recording is begun and with each of its blocks: once true, none
+    /// is begun any more, those in work are dropped, and the report says that it is not
+    /// complete.
     fn interrupted(&self) -> bool {
         false
+    }
+    /// Hears that so many more input bytes went through, and says whether to go on.
+    ///
+    /// # Errors
+    /// The run was interrupted.
+    fn pass(&self, bytes: u64) -> Result<(), Interrupted> {
+        self.advanced(bytes);
+        if self.interrupted() { Err(Interrupted) } else { Ok(()) }
     }
     /// A file was begun that must not be left if the program ends in the middle. It is
     /// gone, or has another name, once the run is over.
@@ -76,10 +99,12 @@ pub struct Outcome {
     pub package: Vec<PathBuf>,
     /// Wall time.
     pub seconds: f64,
-    /// False where the run was interrupted before every recording was begun.
+    /// Recordings that an earlier run had done, found unchanged and kept.
+    pub kept: u64,
+    /// False where the run was interrupted before every recording was done.
     pub complete: bool,
-    /// Recordings that an interrupted run did not begin.
-    pub not_begun: u64,
+    /// Recordings that an interrupted run did not begin or gave up half-way.
+    pub not_done: u64,
     /// Bytes of samples that were read.
     pub bytes_read: u64,
     /// What a dry run would do.
@@ -98,7 +123,8 @@ impl Outcome {
             package: Vec::new(),
             seconds: 0.0,
             complete: true,
-            not_begun: 0,
+            kept: 0,
+            not_done: 0,
             bytes_read: 0,
             dry: None,
         }

@@ -4,8 +4,9 @@ use super::collector::Collector;
 use super::recording::Treatment;
 use super::segments::{self, Passing, block_frames};
 use crate::evidence::Idle;
+use crate::files::open;
 use crate::spectrum::SegmentPlan;
-use crate::wave::{Header, InputFigures, Reader, WaveError};
+use crate::wave::{Header, InputFigures, RateMeaning, Reader, WaveError};
 use std::collections::HashMap;
 use std::fs::File;
 use std::io;
@@ -41,6 +42,7 @@ impl IdleSpectra {
 #[derive(Debug)]
 pub struct IdleNoise {
     path: PathBuf,
+    rate: Option<RateMeaning>,
     rate_hz: u32,
     channels: u16,
     frames: u64,
@@ -102,18 +104,19 @@ pub enum NoiseError {
 }
 
 impl IdleNoise {
-    /// Reads the recording at `path` once.
+    /// Reads the recording at `path` once; `rate` is what frequencies mean if it is
+    /// time-expanded.
     ///
     /// # Errors
     /// It is none.
-    pub fn open(path: &Path) -> Result<Self, NoiseError> {
-        let mut reader = reader(path)?;
+    pub fn open(path: &Path, rate: Option<RateMeaning>) -> Result<Self, NoiseError> {
+        let mut reader = reader(path, rate)?;
         let Header { rate_hz, channels, frames, .. } = *reader.header();
         let read = |cause| NoiseError::Read { path: path.into(), cause };
         let mut alone = Alone::new(&mut reader);
         alone.run_out().map_err(read)?;
         let figures = reader.finish().map_err(read)?;
-        Ok(IdleNoise { path: path.into(), rate_hz, channels, frames, figures, known: Mutex::default() })
+        Ok(IdleNoise { path: path.into(), rate, rate_hz, channels, frames, figures, known: Mutex::default() })
     }
 
     /// SHA-256 of its file, lower-case hexadecimal.
@@ -152,7 +155,7 @@ impl IdleNoise {
         }
         let read = |cause| NoiseError::Read { path: self.path.clone(), cause };
         let changed = || NoiseError::Changed { path: self.path.clone() };
-        let mut reader = reader(&self.path)?;
+        let mut reader = reader(&self.path, self.rate)?;
         let Header { rate_hz, channels, frames, .. } = *reader.header();
         if (rate_hz, channels, frames) != (self.rate_hz, self.channels, self.frames) {
             return Err(changed());
@@ -187,9 +190,9 @@ impl IdleNoise {
     }
 }
 
-fn reader(path: &Path) -> Result<Reader<File>, NoiseError> {
-    let file = File::open(path).map_err(|cause| NoiseError::Open { path: path.into(), cause })?;
-    Reader::open(file).map_err(|cause| NoiseError::Read { path: path.into(), cause })
+fn reader(path: &Path, rate: Option<RateMeaning>) -> Result<Reader<File>, NoiseError> {
+    let file = open::regular(path).map_err(|cause| NoiseError::Open { path: path.into(), cause })?;
+    Reader::open_as(file, rate).map_err(|cause| NoiseError::Read { path: path.into(), cause })
 }
 
 /// One recording that stands on both sides.
@@ -263,7 +266,7 @@ mod tests {
         let folder = tempfile::tempdir().unwrap();
         let path = folder.path().join("idle.wav");
         record(&path, 1);
-        let noise = IdleNoise::open(&path).unwrap();
+        let noise = IdleNoise::open(&path, None).unwrap();
         let (pair, plan, treatment) = (header(&path), SegmentPlan::spread(4096, 0..FRAMES), any_treatment());
         record(&path, 2);
         let refused = noise.spectra(&pair, &plan, &treatment).unwrap_err();

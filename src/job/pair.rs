@@ -7,12 +7,13 @@ use super::collector::Collector;
 use super::noise::{IdleNoise, IdleSpectra, NoiseError};
 use super::recording::Treatment;
 use super::segments::{self, Passing, block_frames};
+use super::{Interrupted, Pass};
 use crate::align::{AlignError, Alignment, Finder, Follower, Search, Side};
 use crate::design::{Design, response};
 use crate::evidence::{self, BandFigures, Deviation, Measured, Pairing};
 use crate::section::Section;
 use crate::spectrum::{SegmentPlan, Spectra};
-use crate::wave::{Header, InputFigures, Reader, WaveError};
+use crate::wave::{Header, InputFigures, RateMeaning, Reader, WaveError};
 use std::io::{Read, Seek};
 use std::ops::Range;
 use std::sync::Arc;
@@ -32,6 +33,8 @@ pub struct PairTask {
     pub delay_frames: Option<f64>,
     /// The idle device.
     pub noise: Option<Arc<IdleNoise>>,
+    /// Which sample rate frequencies mean in time-expanded recordings.
+    pub rate: Option<RateMeaning>,
 }
 
 /// What a pair showed.
@@ -104,6 +107,9 @@ pub enum PairError {
         /// 1 for the first.
         channel: usize,
     },
+    /// The user asked for an end.
+    #[error(transparent)]
+    Interrupted(#[from] Interrupted),
     /// The idle device's recording does not serve.
     #[error(transparent)]
     Noise(#[from] NoiseError),
@@ -121,6 +127,7 @@ impl PairTask {
             max_delay_s: DEFAULT_MAX_DELAY_S,
             delay_frames: None,
             noise: None,
+            rate: spec.rate,
         }
     }
 }
@@ -130,7 +137,7 @@ pub const DEFAULT_MAX_DELAY_S: f64 = 10.0;
 
 /// Lays `after` against `before` and measures both.
 ///
-/// `advanced` hears how many bytes of samples went through; each recording is read twice.
+/// `pass` hears how many bytes of samples went through, and may end it; each recording is read twice.
 ///
 /// # Errors
 /// See [`PairError`].
@@ -138,13 +145,13 @@ pub fn measure<R: Read + Seek + Send, S: Read + Seek + Send>(
     mut before: Reader<R>,
     mut after: Reader<S>,
     task: &PairTask,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<PairMeasured, PairError> {
     alike(before.header(), after.header())?;
-    let alignment = align(&mut before, &mut after, task, advanced)?;
+    let alignment = align(&mut before, &mut after, task, pass)?;
     before.rewind();
     after.rewind();
-    let seen = Passage::run(&mut before, &mut after, &alignment, &task.treatment, true, advanced)?;
+    let seen = Passage::run(&mut before, &mut after, &alignment, &task.treatment, true, pass)?;
     let Passage { overlap, plan, spectra, reaches_share } = seen;
     let (before_figures, after_figures) =
         (before.finish().map_err(PairError::Before)?, after.finish().map_err(PairError::After)?);
@@ -194,7 +201,7 @@ pub fn remeasure<R: Read + Seek + Send, S: Read + Seek + Send>(
     mut output: Reader<S>,
     treatment: &Treatment,
     gain_db: f64,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<Vec<Vec<BandFigures>>, PairError> {
     alike(input.header(), output.header())?;
     let (before, after) = (input.header().frames, output.header().frames);
@@ -211,8 +218,7 @@ pub fn remeasure<R: Read + Seek + Send, S: Read + Seek + Send>(
         certain: true,
         notes: Vec::new(),
     };
-    let Passage { overlap, plan, spectra, .. } =
-        Passage::run(&mut input, &mut output, &still, treatment, false, advanced)?;
+    let Passage { overlap, plan, spectra, .. } = Passage::run(&mut input, &mut output, &still, treatment, false, pass)?;
     let header = input.header();
     let Some(plan) = plan else { return Ok(unsettled(&overlap, treatment, header)) };
     let (before, after) = (input.finish().map_err(PairError::Before)?, output.finish().map_err(PairError::After)?);
@@ -239,10 +245,18 @@ pub fn remeasure<R: Read + Seek + Send, S: Read + Seek + Send>(
 /// Rounding with triangular dither has three times the power of rounding alone.
 const DITHERED: f64 = 3.0;
 
+/// The sample rate, and what the header states where that is another.
+fn rate(header: &Header) -> String {
+    let Header { rate_hz, header_rate_hz, .. } = header;
+    let stated =
+        if rate_hz == header_rate_hz { String::new() } else { format!(" (time-expanded to {header_rate_hz} Hz)") };
+    format!("{rate_hz} Hz{stated}")
+}
+
 fn alike(before: &Header, after: &Header) -> Result<(), PairError> {
     let unlike = |what, before, after| Err(PairError::Unlike { what, before, after });
     if before.rate_hz != after.rate_hz {
-        return unlike("sample rate", format!("{} Hz", before.rate_hz), format!("{} Hz", after.rate_hz));
+        return unlike("sample rate", rate(before), rate(after));
     }
     if before.channels != after.channels {
         let channels = |count: u16| format!("{count} channel{}", if count == 1 { "" } else { "s" });
@@ -256,7 +270,7 @@ fn align<R: Read + Seek, S: Read + Seek>(
     before: &mut Reader<R>,
     after: &mut Reader<S>,
     task: &PairTask,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<Alignment, PairError> {
     let channels = usize::from(before.header().channels);
     let bytes = [frame_bytes(before.header()), frame_bytes(after.header())];
@@ -279,7 +293,7 @@ fn align<R: Read + Seek, S: Read + Seek>(
             Side::After => (after.read(block, &mut planes).map_err(PairError::After)?, bytes[1]),
         };
         finder.take(side, &planes);
-        advanced(frames as u64 * bytes);
+        pass(frames as u64 * bytes)?;
     }
     Ok(finder.finish()?)
 }
@@ -370,7 +384,7 @@ impl Passage {
         alignment: &Alignment,
         treatment: &Treatment,
         all_cross: bool,
-        advanced: &(dyn Fn(u64) + Sync),
+        pass: &Pass<'_>,
     ) -> Result<Self, PairError> {
         let rate_hz = before.header().rate_hz;
         let channels = usize::from(before.header().channels);
@@ -400,7 +414,7 @@ impl Passage {
             given_after: 0,
             before_ended: false,
             after_ended: false,
-            advanced,
+            pass,
         };
         let spectra = match &plan {
             Some(plan) => {
@@ -432,7 +446,7 @@ struct Sides<'a, R, S> {
     given_after: u64,
     before_ended: bool,
     after_ended: bool,
-    advanced: &'a (dyn Fn(u64) + Sync),
+    pass: &'a Pass<'a>,
 }
 
 impl<R: Read + Seek + Send, S: Read + Seek + Send> Sides<'_, R, S> {
@@ -488,7 +502,7 @@ impl<R: Read + Seek + Send, S: Read + Seek + Send> Passing for Sides<'_, R, S> {
         if let Some(collector) = collector {
             collector.take(&self.planes, &self.partners);
         }
-        (self.advanced)(bytes);
+        (self.pass)(bytes)?;
         Ok(())
     }
 

@@ -6,7 +6,7 @@ use super::journal::Journal;
 use crate::report::{Recording, Status, SummaryBuilder};
 use std::io;
 use std::path::Path;
-use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::atomic::{AtomicU64, AtomicUsize, Ordering};
 use std::sync::{Mutex, PoisonError};
 
 /// Takes the entries of recordings as they are done.
@@ -16,16 +16,19 @@ pub struct Record<'a> {
     pub progress: &'a dyn Progress,
     seen: Mutex<SummaryBuilder>,
     journal_error: Mutex<Option<io::Error>>,
+    /// Recordings begun and given up because the run was interrupted.
+    dropped: AtomicU64,
 }
 
 impl<'a> Record<'a> {
     /// Nothing done yet.
     pub fn new(journal: &'a Journal, progress: &'a dyn Progress, seen: SummaryBuilder) -> Self {
-        Record { journal, progress, seen: Mutex::new(seen), journal_error: Mutex::new(None) }
+        let (seen, journal_error) = (Mutex::new(seen), Mutex::new(None));
+        Record { journal, progress, seen, journal_error, dropped: AtomicU64::new(0) }
     }
 
     /// Does `one` for each of `items` in the current thread pool, in their order, and says
-    /// how many were not begun because the run was interrupted.
+    /// how many were not begun or given up because the run was interrupted.
     pub fn each<T: Sync>(&self, items: &[T], one: impl Fn(&T) + Sync) -> u64 {
         let next = AtomicUsize::new(0);
         // One long task a thread: a thread that finds no recording left is free to
@@ -37,7 +40,13 @@ impl<'a> Record<'a> {
             }
         });
         // The counter runs past the end once a thread finds nothing left.
-        items.len().saturating_sub(next.into_inner()) as u64
+        let not_begun = items.len().saturating_sub(next.into_inner()) as u64;
+        not_begun + self.dropped.load(Ordering::Relaxed)
+    }
+
+    /// A recording was given up half-way: nothing of it is left, and nothing is said of it.
+    pub fn drop_one(&self) {
+        self.dropped.fetch_add(1, Ordering::Relaxed);
     }
 
     /// Journal entry first, then the final name: a name without an entry can't come

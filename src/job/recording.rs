@@ -5,12 +5,13 @@
 
 use super::collector::Collector;
 use super::segments::{self, Passing, block_frames};
+use super::{Interrupted, Pass};
 use crate::cascade::{Cascade, Filter};
 use crate::evidence::{self, BandFigures, BandTask, Measured};
 use crate::output::{Output, OutputFigures, OutputPlan};
 use crate::spec::{Overload, Requirement};
 use crate::spectrum::{SegmentPlan, Spectra, TransformCache, segment_frames};
-use crate::wave::{Header, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
+use crate::wave::{Changes, Header, History, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
 use std::io::{self, Read, Seek, SeekFrom, Write};
 use std::sync::Arc;
 
@@ -27,6 +28,10 @@ pub struct Treatment {
     pub bands: Vec<BandTask>,
     /// Format of the output; `None` for the input's own.
     pub format: Option<SampleFormat>,
+    /// A RIFF output longer than this becomes RF64.
+    pub riff_limit_bytes: u64,
+    /// What is appended to each recording's own metadata.
+    pub history: Option<History>,
     /// Whether integer output is dithered.
     pub dither: bool,
     /// What happens when samples exceed full scale.
@@ -95,6 +100,9 @@ pub enum RecordingError {
     /// The witness's impulse recording can't be made.
     #[error("the impulse recording could not be written: {0}")]
     Impulse(String),
+    /// The user asked for an end.
+    #[error(transparent)]
+    Interrupted(#[from] Interrupted),
     /// The output can't be started again for `overload = "scale"`.
     #[error("the output can't be rewound to be written with another gain: {0}")]
     Rewind(io::Error),
@@ -102,14 +110,14 @@ pub enum RecordingError {
 
 /// Filters `input` into `sink` and measures both sides.
 ///
-/// `advanced` hears how many input bytes went through, block by block.
+/// `pass` hears how many input bytes went through, block by block, and may end it.
 pub fn process<R: Read + Seek + Send, W: Write + Seek + Send>(
     mut input: Reader<R>,
     mut sink: W,
     treatment: &Treatment,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<(W, Processed), RecordingError> {
-    let first = run(&mut input, &mut sink, treatment, treatment.gain_db, advanced)?;
+    let first = run(&mut input, &mut sink, treatment, treatment.gain_db, pass)?;
     if first.output.clipped_samples == 0 || treatment.overload == Overload::Clip {
         return Ok((sink, first));
     }
@@ -126,7 +134,7 @@ pub fn process<R: Read + Seek + Send, W: Write + Seek + Send>(
     let gain_db = fitting_gain_db(treatment.gain_db, over_db, first.format);
     input.rewind();
     sink.seek(SeekFrom::Start(0)).map_err(RecordingError::Rewind)?;
-    let mut second = run(&mut input, &mut sink, treatment, gain_db, &|_| ())?;
+    let mut second = run(&mut input, &mut sink, treatment, gain_db, &|_| pass(0))?;
     second.scaled = true;
     Ok((sink, second))
 }
@@ -155,31 +163,27 @@ fn run<R: Read + Seek + Send, W: Write + Send>(
     sink: &mut W,
     treatment: &Treatment,
     gain_db: f64,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<Processed, RecordingError> {
     let header = input.header().clone();
     let channels = usize::from(header.channels);
     let format = treatment.format.unwrap_or(header.format);
     let gain = libm::exp10(gain_db / 20.0);
     let plan = plan_segments(&header, treatment);
+    // Of what passes unchanged there is nothing to say.
+    let unchanged = treatment.identity && format == header.format;
+    let history = treatment.history.clone().filter(|_| !unchanged);
+    let changes = Changes { format, riff_limit_bytes: treatment.riff_limit_bytes, history };
 
     let mut stream = Stream {
-        writer: Writer::begin(sink, input, format)?,
+        writer: Writer::begin(sink, input, &changes)?,
         input,
         filter: Filter::new(Arc::clone(&treatment.cascade), channels),
-        output: Output::new(
-            OutputPlan {
-                format,
-                dither: treatment.dither,
-                gain,
-                identity: treatment.identity && format == header.format,
-            },
-            channels,
-        ),
+        output: Output::new(OutputPlan { format, dither: treatment.dither, gain, identity: unchanged }, channels),
         before: vec![Vec::new(); channels],
         after: vec![Vec::new(); channels],
         frame_bytes: header.data_bytes / header.frames.max(1),
-        advanced,
+        pass,
         ended: false,
     };
     let spectra = match &plan {
@@ -269,7 +273,7 @@ struct Stream<'a, R, W> {
     before: Vec<Vec<f64>>,
     after: Vec<Vec<f64>>,
     frame_bytes: u64,
-    advanced: &'a (dyn Fn(u64) + Sync),
+    pass: &'a Pass<'a>,
     ended: bool,
 }
 
@@ -292,7 +296,7 @@ impl<R: Read + Seek + Send, W: Write + Send> Passing for Stream<'_, R, W> {
         if let Some(collector) = collector {
             collector.take(&self.before, &self.after);
         }
-        (self.advanced)(frames as u64 * self.frame_bytes);
+        (self.pass)(frames as u64 * self.frame_bytes)?;
         Ok(())
     }
 

@@ -1,12 +1,13 @@
 //! A look ahead: every recording read and filtered, nothing written.
 
 use super::Progress;
+use super::earlier::Standing;
 use super::failure::{Failure, contained};
 use super::plan::{Plan, Planned};
 use super::recording::process;
 use super::sink::Nowhere;
+use crate::files::open;
 use crate::wave::Reader;
-use std::fs::File;
 use std::sync::atomic::{AtomicUsize, Ordering};
 use std::sync::{Mutex, PoisonError};
 
@@ -28,6 +29,9 @@ pub fn scan(plan: &Plan, progress: &dyn Progress) -> Vec<Option<Foreseen>> {
         while !progress.interrupted() {
             let index = next.fetch_add(1, Ordering::Relaxed);
             let Some(planned) = plan.recordings.get(index) else { break };
+            if planned.standing == Standing::Kept {
+                continue;
+            }
             let foreseen = match contained(|| scan_one(plan, planned, progress)) {
                 Ok(overload) => overload.map(|problem| Foreseen { problem, fails: false }),
                 Err(failure) => Some(Foreseen { problem: failure.to_string(), fails: true }),
@@ -41,13 +45,13 @@ pub fn scan(plan: &Plan, progress: &dyn Progress) -> Vec<Option<Foreseen>> {
 }
 
 fn scan_one(plan: &Plan, planned: &Planned, progress: &dyn Progress) -> Result<Option<String>, Failure> {
-    let brief = planned.header.as_ref().map_err(|why| Failure::Header(why.clone()))?;
+    let brief = planned.usable().map_err(|why| Failure::Header(why.to_owned()))?;
     let Some(rate) = plan.rates.get(&brief.rate_hz) else { return Ok(None) };
-    let file = File::open(&planned.found.path).map_err(Failure::Open)?;
-    let reader = Reader::open(file)?;
+    let file = open::regular(&planned.found.path).map_err(Failure::Open)?;
+    let reader = Reader::open_as(file, plan.rate)?;
     let mut treatment = rate.treatment.clone();
     treatment.bands.clear();
-    let (_, processed) = process(reader, Nowhere::default(), &treatment, &|bytes| progress.advanced(bytes))?;
+    let (_, processed) = process(reader, Nowhere::default(), &treatment, &|bytes| progress.pass(bytes))?;
     Ok((processed.output.clipped_samples > 0 || processed.scaled).then(|| {
         if processed.scaled {
             format!("would be filtered again with a gain of {:.3} dB to fit full scale", processed.gain_db)

@@ -62,6 +62,7 @@ pub fn respond(design: &Design, treatment: &Treatment) -> Result<Vec<f64>, Recor
         identity: false,
         bands: Vec::new(),
         format: Some(SampleFormat::full(Encoding::Float64)),
+        history: None,
         dither: false,
         overload: Overload::Clip,
         gain_db: 0.0,
@@ -69,7 +70,7 @@ pub fn respond(design: &Design, treatment: &Treatment) -> Result<Vec<f64>, Recor
     };
     let recording = impulse_recording(design.rate_hz, frames(design)?)?;
     let reader = Reader::open(Cursor::new(recording))?;
-    let (written, _) = process(reader, Cursor::new(Vec::new()), &treatment, &|_| ())?;
+    let (written, _) = process(reader, Cursor::new(Vec::new()), &treatment, &|_| Ok(()))?;
     let mut reader = Reader::open(Cursor::new(written.into_inner()))?;
     let mut planes = vec![Vec::new()];
     while reader.read(1 << 20, &mut planes)? > 0 {}

@@ -7,8 +7,13 @@ use bandproof::spec::{
     Overload, Placement, Requirement, Row, Spec, Stage, Width,
 };
 
-const OUTPUT: OutputSpec =
-    OutputSpec { encoding: OutputEncoding::Same, dither: Dither::Triangular, overload: Overload::Refuse, gain_db: 0.0 };
+const OUTPUT: OutputSpec = OutputSpec {
+    encoding: OutputEncoding::Same,
+    dither: Dither::Triangular,
+    overload: Overload::Refuse,
+    gain_db: 0.0,
+    history: false,
+};
 
 /// Rumble, hum and whine of a pumping station.
 fn pumping_station() -> Spec {
@@ -32,6 +37,7 @@ fn pumping_station() -> Spec {
     let notch = NotchStage { row: Row { center_hz: 15_800.0, width: Width::Q(60.0), harmonics: 1 } };
     Spec {
         reference_band: None,
+        rate: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::LeaveOut,
         output: OUTPUT,
@@ -102,6 +108,7 @@ fn a_spec_without_stages_is_the_identity() {
     let bands = vec![band("all", 0.0, 4_000.0, keep(0.1, &[])), band("hum", 49.0, 51.0, reduce(20.0))];
     let spec = Spec {
         reference_band: None,
+        rate: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OUTPUT,
@@ -132,7 +139,15 @@ fn one_stage(kind: FilterKind, family: Family, order: u32, band: Band) -> Spec {
     let stop_db = matches!(family, Family::Chebyshev2 | Family::Elliptic).then_some(40.0);
     let stage = FilterStage { kind, family, order, placement, ripple_db, stop_db };
     let (stages, bands) = (vec![Stage::Filter(stage)], vec![band]);
-    Spec { reference_band: None, title: None, beyond_half_rate: BeyondHalfRate::Error, output: OUTPUT, stages, bands }
+    Spec {
+        rate: None,
+        reference_band: None,
+        title: None,
+        beyond_half_rate: BeyondHalfRate::Error,
+        output: OUTPUT,
+        stages,
+        bands,
+    }
 }
 
 #[test]

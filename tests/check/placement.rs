@@ -14,8 +14,9 @@ fn spec(stages: Vec<Stage>, bands: Vec<Band>, beyond_half_rate: BeyondHalfRate) 
         dither: Dither::Triangular,
         overload: Overload::Refuse,
         gain_db: 0.0,
+        history: false,
     };
-    Spec { reference_band: None, title: None, beyond_half_rate, output, stages, bands }
+    Spec { reference_band: None, rate: None, title: None, beyond_half_rate, output, stages, bands }
 }
 
 fn filter(kind: FilterKind, placement: Placement) -> Stage {

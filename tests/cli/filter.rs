@@ -101,8 +101,8 @@ fn quiet_leaves_errors_status_and_report() {
     let ended = folder.filter("tone.toml", &["--quiet"]);
     assert_eq!((ended.status, ended.stdout.as_str(), ended.stderr.as_str()), (0, "", ""));
     assert!(folder.path("out/bandproof-report.json").exists());
-    // A second run would write over the first.
-    let ended = folder.filter("tone.toml", &["--quiet"]);
+    // A run with another spec would write over the first.
+    let ended = folder.filter("fixed-rate.toml", &["--quiet"]);
     assert_eq!((ended.status, ended.stdout.as_str()), (2, ""));
     assert!(ended.stderr.starts_with("bandproof: ") && ended.stderr.contains("--replace"), "{}", ended.stderr);
 }

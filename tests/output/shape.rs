@@ -3,7 +3,7 @@
 use std::io::Cursor;
 
 use bandproof::output::{Output, OutputFigures, OutputPlan};
-use bandproof::wave::{Encoding, Reader, SampleFormat, Writer};
+use bandproof::wave::{Changes, Encoding, Reader, SampleFormat, Writer};
 use proptest::prelude::*;
 
 const INTEGERS: [SampleFormat; 7] = [
@@ -213,7 +213,7 @@ proptest! {
         values.iter().for_each(|_| seed.write_sample(0i16).unwrap());
         seed.finalize().unwrap();
         let mut input = Reader::open(source).unwrap();
-        let mut writer = Writer::begin(Vec::new(), &mut input, format).unwrap();
+        let mut writer = Writer::begin(Vec::new(), &mut input, &Changes::samples(format)).unwrap();
         writer.write(std::slice::from_ref(&shaped)).unwrap();
         let (file, _) = writer.finish(&mut input).unwrap();
         let mut reader = Reader::open(Cursor::new(file)).unwrap();

@@ -79,3 +79,23 @@ fn strict_counts_unproven_as_missed() {
     assert_eq!(bench.filter("--strict --replace").status, 1);
     assert_eq!(bench.report()["summary"]["verdict"], "unproven");
 }
+
+/// Found by damaging files at random: several sizes are wrong at once, so that right ones
+/// make another recording of the same bytes.
+#[test]
+fn a_recording_whose_output_would_be_read_otherwise_fails_and_leaves_none() {
+    let bench = Bench::new("[[band]]\nname = \"all\"\nfrom_hz = 10\nto_hz = 100\n");
+    let digits = "52494646f200000057415645647336341c000000f2000000000000008400000000000000000000000000000000000000 \
+                  666d7420100000000100020044ac000010b10200040010006c69737404000000494e464f4a554e4b0000000064617461 \
+                  ffffffff0080c2d30294fea160e58634c8fecf0097d77af9135137748e48fc49ff7fc6e30080b48543037d220c2e0000 \
+                  58ae1246cbe33465ff7f452804bc5754462790688487177be1d65edeff7fab82ff7fec6fc59f55369f95a2c3c04d8142 \
+                  322e132b00802e7a0000cf8f49b72bccc977b45863c84a554e4b0100000009004a554e4b00000000";
+    let digits: String = digits.split_whitespace().collect();
+    let bytes: Vec<u8> =
+        (0..digits.len() / 2).map(|k| u8::from_str_radix(&digits[2 * k..2 * k + 2], 16).unwrap()).collect();
+    bench.input("torn.wav", &bytes);
+    let ran = bench.filter("");
+    assert_eq!(ran.status, 3, "{}", ran.stdout);
+    assert!(ran.stderr.contains("torn.wav: byte 92: the sizes around `data` contradict each other"), "{}", ran.stderr);
+    assert!(!bench.path("out/torn.wav").exists());
+}

@@ -16,4 +16,5 @@ mod identity;
 mod jobs;
 mod overload;
 mod recordings;
+mod resume;
 mod witness;

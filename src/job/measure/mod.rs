@@ -13,16 +13,17 @@ use super::noise::IdleNoise;
 use super::pair::PairTask;
 use super::plan::Brief;
 use super::record::Record;
-use super::{JobError, Outcome, Progress, defect, in_pool, run_entry, spec_entry};
+use super::{JobError, Outcome, Pass, Progress, defect, in_pool, run_entry, spec_entry};
 use crate::design::{Design, design};
+use crate::files::open;
 use crate::files::place::folder_of;
 use crate::report::{DesignEntry, Head, Recording, SummaryBuilder};
 use crate::spec::SpecFile;
-use crate::wave::{Header, Reader};
+use crate::wave::{Header, RateMeaning, Reader};
 pub use entry::PairNames;
 use pairs::{Pair, Pairs, Sided};
 use rayon::prelude::*;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, HashSet};
 use std::fmt::Display;
 use std::fs::File;
 use std::path::{Path, PathBuf};
@@ -81,7 +82,7 @@ fn measure_in_pool(job: &MeasureJob, progress: &dyn Progress) -> Result<Outcome,
     let started = jiff::Timestamp::now();
     let clock = Instant::now();
     let Pairs { pairs, unpaired, unpaired_files, unreadable, skipped } =
-        pairs::find(&job.before, &job.after, &job.include, &job.exclude)?;
+        pairs::find(&job.before, &job.after, &job.include, &job.exclude, job.spec.spec.rate)?;
     refuse_to_overwrite(job, &pairs, &unpaired_files)?;
     let rates = rates(job, &pairs)?;
     let designs = design_entries(&rates)?;
@@ -102,8 +103,8 @@ fn measure_in_pool(job: &MeasureJob, progress: &dyn Progress) -> Result<Outcome,
     }
     let mut order: Vec<&Pair> = pairs.iter().collect();
     order.sort_by_key(|pair| (std::cmp::Reverse(pair.before.found.bytes), &pair.before.shown));
-    let not_begun = batch.record.each(&order, |pair| batch.one(pair));
-    let complete = not_begun == 0;
+    let not_done = batch.record.each(&order, |pair| batch.one(pair));
+    let complete = not_done == 0;
     let (mut summary, highlights) = batch
         .record
         .finish()
@@ -112,13 +113,13 @@ fn measure_in_pool(job: &MeasureJob, progress: &dyn Progress) -> Result<Outcome,
     summary.unpaired = Some(unpaired);
     let run = run_entry(started, clock, job.jobs, None);
     let head = Head::new(run, complete, spec_entry(&job.spec)?, designs);
-    documents.finish(job.replace, &head, &journal, &summary)?;
+    documents.finish(&|_| job.replace, &head, &journal, &summary)?;
     Ok(Outcome {
         report_path: Some(job.report.clone()),
         table_path: job.table.clone(),
         seconds: clock.elapsed().as_secs_f64(),
         complete,
-        not_begun,
+        not_done,
         bytes_read: counted.bytes(),
         ..Outcome::new(summary, highlights, head.designs)
     })
@@ -131,16 +132,25 @@ fn refuse_to_overwrite(job: &MeasureJob, pairs: &[Pair], unpaired: &[PathBuf]) -
     guard::check(&Guarded {
         reads: recordings.chain(others).collect(),
         input: &job.before,
+        output: None,
         outputs: Vec::new(),
         documents: documents.chain(job.table.as_deref().map(|table| ("--csv", table))).collect(),
         replace: job.replace,
+        ours: HashSet::new(),
+        reason: None,
     })
 }
 
 /// The design at every sample rate of a recording before. Nothing is checked against it:
 /// something else filtered.
 fn rates(job: &MeasureJob, pairs: &[Pair]) -> Result<BTreeMap<u32, Rate>, JobError> {
-    let noise = job.noise.as_deref().map(IdleNoise::open).transpose().map_err(JobError::Noise)?.map(Arc::new);
+    let noise = job
+        .noise
+        .as_deref()
+        .map(|path| IdleNoise::open(path, job.spec.spec.rate))
+        .transpose()
+        .map_err(JobError::Noise)?
+        .map(Arc::new);
     let mut first_with: BTreeMap<u32, &str> = BTreeMap::new();
     for pair in pairs {
         if let Ok(header) = &pair.before.header {
@@ -180,6 +190,10 @@ impl Batch<'_> {
         let mut headers = [None, None];
         let recording = match contained(|| self.produce(pair, &mut headers)) {
             Ok(recording) => recording,
+            Err(failure) if failure.is_interruption() => {
+                self.record.drop_one();
+                return;
+            }
             Err(failure) => entry::failed(&names(pair), &failure, &headers),
         };
         self.record.add(relative, recording, || Ok(()));
@@ -189,9 +203,9 @@ impl Batch<'_> {
         let brief = usable("before", &pair.before)?;
         let rate = self.rates.get(&brief.rate_hz).ok_or_else(super::batch::changed)?;
         let _room = self.budget.enter(brief, &rate.task.treatment);
-        let advanced = |bytes| self.record.progress.advanced(bytes);
+        let pass = |bytes| self.record.progress.pass(bytes);
         let files = [pair.before.found.path.as_path(), pair.after.found.path.as_path()];
-        measure_files(files, &names(pair), &rate.task, &advanced, headers)
+        measure_files(files, &names(pair), &rate.task, &pass, headers)
     }
 }
 
@@ -217,9 +231,9 @@ pub fn measure_pair(
     after: &Path,
     names: &PairNames,
     task: &PairTask,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
 ) -> Result<Recording, String> {
-    let measured = contained(|| measure_files([before, after], names, task, advanced, &mut [None, None]));
+    let measured = contained(|| measure_files([before, after], names, task, pass, &mut [None, None]));
     measured.map_err(|failure| failure.to_string())
 }
 
@@ -228,19 +242,19 @@ fn measure_files(
     [before, after]: [&Path; 2],
     names: &PairNames,
     task: &PairTask,
-    advanced: &(dyn Fn(u64) + Sync),
+    pass: &Pass<'_>,
     [header_before, header_after]: &mut [Option<Header>; 2],
 ) -> Result<Recording, Failure> {
-    let before = open("before", before)?;
+    let before = open("before", before, task.rate)?;
     let header_before = &*header_before.insert(before.header().clone());
-    let after = open("after", after)?;
+    let after = open("after", after, task.rate)?;
     let header_after = &*header_after.insert(after.header().clone());
-    let measured = super::pair::measure(before, after, task, advanced)?;
+    let measured = super::pair::measure(before, after, task, pass)?;
     Ok(entry::done(names, [header_before, header_after], &measured, task)?)
 }
 
-fn open(side: &str, path: &Path) -> Result<Reader<File>, Failure> {
+fn open(side: &str, path: &Path, rate: Option<RateMeaning>) -> Result<Reader<File>, Failure> {
     let failed = |why: &dyn Display| Failure::Header(format!("{side}: {why}"));
-    let file = File::open(path).map_err(|cause| failed(&Failure::Open(cause)))?;
-    Reader::open(file).map_err(|cause| failed(&cause))
+    let file = open::regular(path).map_err(|cause| failed(&Failure::Open(cause)))?;
+    Reader::open_as(file, rate).map_err(|cause| failed(&cause))
 }

@@ -4,11 +4,11 @@ use super::super::JobError;
 use super::super::discover::{Discovered, Found, discover};
 use super::super::paths;
 use super::super::plan::Brief;
+use crate::files::open;
 use crate::report::{Skipped, Unpaired};
-use crate::wave::Reader;
+use crate::wave::{RateMeaning, Reader};
 use rayon::prelude::*;
 use std::collections::BTreeMap;
-use std::fs::File;
 use std::path::{Path, PathBuf};
 
 /// Two recordings of the same sound.
@@ -49,7 +49,15 @@ pub struct Pairs {
 }
 
 /// Pairs recordings by their paths below two folders, or takes two recordings as they are.
-pub fn find(before: &Path, after: &Path, include: &[String], exclude: &[String]) -> Result<Pairs, JobError> {
+///
+/// `rate` is what the spec's frequencies mean in time-expanded recordings.
+pub fn find(
+    before: &Path,
+    after: &Path,
+    include: &[String],
+    exclude: &[String],
+    rate: Option<RateMeaning>,
+) -> Result<Pairs, JobError> {
     let is_folder = |path: &Path| {
         path.metadata().map(|metadata| metadata.is_dir()).map_err(|cause| JobError::Input { path: path.into(), cause })
     };
@@ -81,7 +89,7 @@ pub fn find(before: &Path, after: &Path, include: &[String], exclude: &[String])
     }
     let pairs = found
         .into_par_iter()
-        .map(|(before, after)| Pair { before: Sided::new(before), after: Sided::new(after) })
+        .map(|(before, after)| Pair { before: Sided::new(before, rate), after: Sided::new(after, rate) })
         .collect();
     Ok(Pairs { pairs, unpaired, unpaired_files, unreadable, skipped })
 }
@@ -126,11 +134,11 @@ impl Matched {
 }
 
 impl Sided {
-    fn new(found: Found) -> Self {
+    fn new(found: Found, rate: Option<RateMeaning>) -> Self {
         let (shown, escaped) = paths::shown(&found.relative);
-        let header = File::open(&found.path)
+        let header = open::regular(&found.path)
             .map_err(|error| format!("can't be opened: {error}"))
-            .and_then(|file| Reader::open(file).map_err(|error| error.to_string()))
+            .and_then(|file| Reader::open_as(file, rate).map_err(|error| error.to_string()))
             .map(|reader| Brief::of(reader.header()));
         Sided { found, shown, escaped, header }
     }

@@ -1,0 +1,579 @@
+//! The same command again: what is done stays, what is not is done, and nobody can tell
+//! from the result.
+
+use super::fixtures::{Bench, NOTCH_SPEC, entry, hum_and_noise, wav16};
+use bandproof::job::{self, FilterJob, JobError, Progress};
+use serde_json::Value;
+use std::fs;
+use std::path::Path;
+use std::sync::atomic::{AtomicU64, Ordering};
+use std::time::SystemTime;
+
+const NAMES: [&str; 4] = ["a.wav", "b.wav", "far/c.wav", "far/d.wav"];
+
+/// Four recordings and one that fails.
+fn bench() -> Bench {
+    let bench = Bench::new(NOTCH_SPEC);
+    for (seed, name) in NAMES.iter().enumerate() {
+        bench.input(name, &wav16(8000, 1, &hum_and_noise(8000, 3.0 + seed as f64, 0.3, seed as u64)));
+    }
+    bench.input("far/empty.wav", b"");
+    bench
+}
+
+/// A report as everything but `run` of it.
+fn lasting(bench: &Bench) -> String {
+    let text = fs::read_to_string(bench.path("out/bandproof-report.json")).unwrap();
+    let run = text.lines().find(|line| line.starts_with("  \"run\": ")).unwrap().to_owned();
+    text.replace(&run, "")
+}
+
+/// Which recordings a dry run would filter.
+fn to_do(bench: &Bench, more: &str) -> Vec<String> {
+    let ran = bench.filter(&format!("--dry-run --json {more}"));
+    let plan: Value = serde_json::from_str(&ran.stdout).unwrap_or_else(|_| panic!("{}", ran.stderr));
+    let open =
+        plan["recordings"].as_array().unwrap().iter().filter(|one| one["kept"] == false && one["fails"] == false);
+    open.map(|one| one["path"].as_str().unwrap().to_owned()).collect()
+}
+
+#[test]
+fn a_finished_run_again_filters_nothing_and_says_the_same() {
+    let bench = bench();
+    assert_eq!(to_do(&bench, ""), NAMES);
+    let first = bench.filter("--csv table.csv");
+    assert_eq!(first.status, 3, "{}", first.stderr);
+    let (report, tree) = (lasting(&bench), bench.tree("out"));
+    assert_eq!(to_do(&bench, "--csv table.csv"), [""; 0]);
+    for more in ["--csv table.csv", "--csv table.csv --jobs 1", "--csv table.csv --replace"] {
+        let again = bench.filter(more);
+        assert_eq!(again.status, 3, "{}", again.stderr);
+        let sentence =
+            "4 of 5 recordings filtered and measured, 4 by an earlier run (input and output unchanged), 1 failed:";
+        assert!(again.stdout.replace('\n', " ").starts_with(sentence), "{}", again.stdout);
+        assert_eq!(lasting(&bench), report);
+        let names = |tree: &[(String, Vec<u8>)]| tree.iter().map(|(name, _)| name.clone()).collect::<Vec<_>>();
+        assert_eq!(names(&bench.tree("out")), names(&tree));
+    }
+}
+
+/// Without a recording that fails, which is tried again, a finished run leaves nothing to do.
+#[test]
+fn a_finished_run_is_left_as_it_is_to_the_last_byte() {
+    for more in ["", "--csv table.csv", "--emit datapackage", "--emit bagit --csv out/data/table.csv"] {
+        let bench = bench();
+        fs::remove_file(bench.path("in/far/empty.wav")).unwrap();
+        let run = || bench.run(&format!("filter spec.toml in out/data {more}"));
+        assert_eq!(run().status, 0, "{more}");
+        let tree = bench.tree("");
+        let leftovers = [".bandproof-Ab12Cd.part", "far/.bandproof-Ab12Cd.part"];
+        leftovers.iter().for_each(|name| drop(bench.write(&format!("out/data/{name}"), b"{}")));
+        let again = run();
+        assert_eq!(again.status, 0, "{more}: {}", again.stderr);
+        assert!(again.stdout.replace('\n', " ").contains("nothing left to do, found in"), "{}", again.stdout);
+        assert_eq!(bench.tree(""), tree, "{more}");
+    }
+}
+
+#[test]
+fn a_package_is_made_anew_when_something_was_left_to_do() {
+    for (emit, files) in [("datapackage", &["datapackage.json"][..]), ("bagit", &["../bagit.txt", "../bag-info.txt"])] {
+        let bench = bench();
+        fs::remove_file(bench.path("in/far/empty.wav")).unwrap();
+        let run = || bench.run(&format!("filter spec.toml in out/data --emit {emit}"));
+        assert_eq!(run().status, 0, "{emit}");
+        let report = bench.report_at("out/data/bandproof-report.json");
+        fs::remove_file(bench.path("out/data/b.wav")).unwrap();
+        bench.write("out/data/far/.bandproof-Ab12Cd.part", b"half a recording");
+        let again = run();
+        assert_eq!(again.status, 0, "{emit}: {}", again.stderr);
+        assert!(again.stdout.contains("3 by an earlier run"), "{}", again.stdout);
+        let now = bench.report_at("out/data/bandproof-report.json");
+        assert_eq!(now["recordings"], report["recordings"], "{emit}");
+        // And its own is known again.
+        let third = run();
+        let told = third.stdout.replace('\n', " ");
+        assert!(told.contains("nothing left to do"), "{emit}: {}{}", third.stdout, third.stderr);
+        // One that somebody edited is not.
+        for file in files {
+            let path = bench.path("out/data").join(file);
+            let text = fs::read_to_string(&path).unwrap();
+            fs::write(&path, format!("{text} ")).unwrap();
+            let tree = bench.tree("");
+            let refused = run();
+            assert_eq!(refused.status, 2, "{emit}, {file}");
+            assert!(refused.stderr.contains("exists already"), "{}", refused.stderr);
+            assert_eq!(bench.tree(""), tree, "{emit}, {file}");
+            fs::write(&path, text).unwrap();
+        }
+    }
+}
+
+#[test]
+fn a_package_that_would_not_be_made_anew_is_not_made_untrue() {
+    for emit in ["datapackage", "bagit"] {
+        let bench = bench();
+        fs::remove_file(bench.path("in/far/empty.wav")).unwrap();
+        assert_eq!(bench.run(&format!("filter spec.toml in out/data --emit {emit}")).status, 0);
+        // Nothing to do: nothing is written.
+        assert_eq!(bench.run("filter spec.toml in out/data").status, 0);
+        fs::remove_file(bench.path("out/data/b.wav")).unwrap();
+        let tree = bench.tree("");
+        let refused = bench.run("filter spec.toml in out/data");
+        assert_eq!(refused.status, 2, "{emit}");
+        assert!(refused.stderr.contains("belongs to a package that lists"), "{}", refused.stderr);
+        assert_eq!(bench.tree(""), tree, "{emit}");
+        assert_eq!(bench.run(&format!("filter spec.toml in out/data --emit {emit}")).status, 0);
+    }
+}
+
+#[test]
+fn what_was_done_is_not_touched() {
+    let bench = bench();
+    bench.filter("");
+    let files = NAMES.map(|name| bench.path(&format!("out/{name}")));
+    // The input's time stands on each output; another one shows whether it is written again.
+    let then = SystemTime::UNIX_EPOCH + std::time::Duration::from_secs(1_000_000_000);
+    for file in &files {
+        fs::File::options().write(true).open(file).unwrap().set_modified(then).unwrap();
+    }
+    bench.filter("");
+    assert!(files.iter().all(|file| file.metadata().unwrap().modified().unwrap() == then));
+}
+
+#[test]
+fn only_what_changed_is_done_again() {
+    let bench = bench();
+    bench.filter("");
+    // An output that is gone, an input with other samples, one that is new, one that failed
+    // and is whole now.
+    fs::remove_file(bench.path("out/b.wav")).unwrap();
+    bench.input("far/c.wav", &wav16(8000, 1, &hum_and_noise(8000, 4.0, 0.1, 9)));
+    bench.input("new.wav", &wav16(8000, 1, &hum_and_noise(8000, 3.0, 0.1, 10)));
+    bench.input("far/empty.wav", &wav16(8000, 1, &hum_and_noise(8000, 3.0, 0.1, 11)));
+    let changed = ["b.wav", "far/c.wav", "far/empty.wav", "new.wav"];
+    assert_eq!(to_do(&bench, ""), changed);
+    let ran = bench.filter("");
+    assert_eq!(ran.status, 0, "{}", ran.stderr);
+    assert!(ran.stdout.contains("2 by an earlier run"), "{}", ran.stdout);
+    let resumed = (lasting(&bench), bench.tree("out").len());
+    fs::remove_dir_all(bench.path("out")).unwrap();
+    bench.filter("");
+    assert_eq!((lasting(&bench), bench.tree("out").len()), resumed);
+}
+
+#[test]
+fn a_recording_that_failed_may_be_taken_away() {
+    let bench = bench();
+    assert_eq!(bench.filter("").status, 3);
+    fs::remove_file(bench.path("in/far/empty.wav")).unwrap();
+    let ran = bench.filter("");
+    assert_eq!(ran.status, 0, "{}", ran.stderr);
+    assert!(ran.stdout.starts_with("4 of 4 recordings filtered and measured, 4 by an earlier run"), "{}", ran.stdout);
+    assert_eq!(bench.report()["summary"]["failed"], 0);
+}
+
+#[test]
+fn an_older_output_of_a_recording_that_fails_now_is_left_and_named() {
+    let bench = bench();
+    bench.filter("");
+    bench.input("b.wav", b"RIFF");
+    let output = fs::read(bench.path("out/b.wav")).unwrap();
+    assert_eq!(bench.filter("").status, 3);
+    let report = bench.report();
+    let notes = entry(&report, "b.wav")["notes"].to_string();
+    assert!(notes.contains("was there before this run and was left alone"), "{notes}");
+    assert_eq!(entry(&report, "far/empty.wav")["notes"].to_string(), "[]");
+    assert_eq!(fs::read(bench.path("out/b.wav")).unwrap(), output);
+    // It is this job's all the same, until it is replaced.
+    let again = bench.filter("");
+    assert_eq!(again.status, 3, "{}", again.stderr);
+    assert_eq!(fs::read(bench.path("out/b.wav")).unwrap(), output);
+    bench.input("b.wav", &wav16(8000, 1, &hum_and_noise(8000, 4.0, 0.1, 9)));
+    assert_eq!(bench.filter("").status, 3);
+    let resumed = (lasting(&bench), bench.tree("out").len());
+    assert_ne!(fs::read(bench.path("out/b.wav")).unwrap(), output);
+    fs::remove_dir_all(bench.path("out")).unwrap();
+    bench.filter("");
+    assert_eq!((lasting(&bench), bench.tree("out").len()), resumed);
+}
+
+/// The entry comes before the name: a run can be killed in between.
+#[test]
+fn an_output_that_a_killed_run_was_about_to_replace_is_replaced() {
+    let bench = bench();
+    bench.filter("");
+    let older = bench.tree("out");
+    bench.input("b.wav", &wav16(8000, 1, &hum_and_noise(8000, 4.0, 0.1, 9)));
+    bench.filter("");
+    let whole = (lasting(&bench), bench.tree("out").len());
+    let sha256 = bench.report()["spec"]["file_sha256"].as_str().unwrap().to_owned();
+    fs::write(bench.path("out/.bandproof-journal"), journal(&bench, &sha256)).unwrap();
+    for (name, bytes) in &older {
+        fs::write(bench.path("out").join(name), bytes).unwrap();
+    }
+    assert_eq!(to_do(&bench, ""), ["b.wav"]);
+    let ran = bench.filter("");
+    assert_eq!(ran.status, 3, "{}", ran.stderr);
+    assert_eq!((lasting(&bench), bench.tree("out").len()), whole);
+}
+
+#[test]
+fn an_output_that_somebody_changed_is_not_written_over_unasked() {
+    let bench = bench();
+    bench.filter("");
+    let whole = lasting(&bench);
+    let mut bytes = fs::read(bench.path("out/b.wav")).unwrap();
+    // One bit of one sample: the length stays.
+    *bytes.last_mut().unwrap() ^= 1;
+    bench.write("out/b.wav", &bytes);
+    let tree = bench.tree("out");
+    let refused = bench.filter("");
+    assert_eq!(refused.status, 2, "{}", refused.stdout);
+    assert!(refused.stderr.contains("b.wav exists already (it is not, or can't be seen to be, what an earlier run"));
+    assert_eq!(bench.tree("out"), tree);
+    assert_eq!(bench.filter("--replace").status, 3);
+    assert_eq!(lasting(&bench), whole);
+    assert_ne!(bench.tree("out"), tree);
+}
+
+#[test]
+fn a_report_of_another_job_counts_for_nothing() {
+    let bench = bench();
+    bench.filter("");
+    let report = fs::read_to_string(bench.path("out/bandproof-report.json")).unwrap();
+    let version = format!("\"tool_version\": \"{}\"", env!("CARGO_PKG_VERSION"));
+    let met = "\"verdict\": \"met\"";
+    let edits = [
+        ("version", report.replace(&version, "\"tool_version\": \"0.0.9\""), "version 0.0.9 of this program"),
+        ("a verdict", report.replacen(met, "\"verdict\": \"missed\"", 1), "summary is not what"),
+        ("a path", report.replace("\"a.wav\"", "\"aa.wav\""), "1 recording, the first aa.wav"),
+        ("no report", report.replace("\"report\": \"bandproof\"", "\"report\": \"other\""), "give --replace"),
+    ];
+    for (what, edited, told) in edits {
+        assert_ne!(edited, report, "{what}");
+        bench.write("out/bandproof-report.json", edited.as_bytes());
+        let refused = bench.filter("");
+        assert_eq!(refused.status, 2, "{what}: {}", refused.stdout);
+        assert!(refused.stderr.contains(told), "{what}: {}", refused.stderr);
+        assert_eq!(fs::read_to_string(bench.path("out/bandproof-report.json")).unwrap(), edited, "{what}");
+    }
+    bench.write("out/bandproof-report.json", report.as_bytes());
+    bench.write("spec.toml", NOTCH_SPEC.replace("reduce_db = 3", "reduce_db = 4").as_bytes());
+    let refused = bench.filter("");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("bandproof-report.json is a report made with another spec"), "{}", refused.stderr);
+    // With leave to replace, everything is done again.
+    let ran = bench.filter("--replace");
+    assert!(ran.stdout.starts_with("4 of 5 recordings filtered and measured, 1 failed"), "{}", ran.stdout);
+}
+
+#[test]
+fn fewer_recordings_than_the_report_lists_are_another_job() {
+    let bench = bench();
+    bench.filter("");
+    let tree = bench.tree("out");
+    let refused = bench.filter("--include far/*");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("(2 recordings, the first a.wav)"), "{}", refused.stderr);
+    assert_eq!(bench.tree("out"), tree);
+    // With leave to replace the report, what is done is done.
+    let ran = bench.filter("--include far/* --replace");
+    assert!(ran.stdout.starts_with("2 of 3 recordings filtered and measured, 2 by an earlier run"), "{}", ran.stdout);
+    bench.filter("--replace");
+    // Its own report has its own place, and outputs are not its own there.
+    let refused = bench.filter("--include far/* --report far.json");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("far/c.wav exists already"), "{}", refused.stderr);
+}
+
+#[test]
+fn a_table_that_was_edited_is_not_written_over_unasked() {
+    let bench = bench();
+    bench.filter("--csv table.csv");
+    let table = fs::read_to_string(bench.path("table.csv")).unwrap();
+    let edited = table.replacen("a.wav", "A.wav", 1);
+    for (what, text) in [("edited", edited.as_str()), ("cut", &table[..100]), ("longer", &format!("{table}x\r\n"))] {
+        bench.write("table.csv", text.as_bytes());
+        let refused = bench.filter("--csv table.csv");
+        assert_eq!(refused.status, 2, "{what}");
+        assert!(refused.stderr.contains("table.csv exists already"), "{what}: {}", refused.stderr);
+        assert_eq!(fs::read_to_string(bench.path("table.csv")).unwrap(), text);
+    }
+    bench.write("table.csv", table.as_bytes());
+    assert_eq!(bench.filter("--csv table.csv").status, 3);
+}
+
+#[cfg(unix)]
+#[test]
+fn names_that_are_not_utf8_are_found_again() {
+    use std::ffi::OsStr;
+    use std::os::unix::ffi::OsStrExt;
+    let bench = Bench::new(NOTCH_SPEC);
+    let sound = wav16(8000, 1, &hum_and_noise(8000, 3.0, 0.3, 1));
+    // Escaped, the first reads like the second.
+    for name in [&b"d\xFF.wav"[..], b"d%FF.wav"] {
+        fs::write(bench.path("in").join(OsStr::from_bytes(name)), &sound).unwrap();
+    }
+    bench.filter("");
+    let report = lasting(&bench);
+    let again = bench.filter("");
+    assert!(again.stdout.contains("2 by an earlier run"), "{}", again.stdout);
+    assert_eq!(lasting(&bench), report);
+}
+
+#[test]
+fn leftovers_of_a_killed_run_go_and_nothing_else_does() {
+    let bench = bench();
+    let stray = bench.write("out/far/.bandproof-Ab12Cd.part", b"half a recording");
+    bench.write("out/.bandproof-journal", b"{}\n");
+    let other = bench.write("out/far/.bandproof-notes", b"mine");
+    bench.filter("--dry-run");
+    assert!(stray.exists());
+    assert_eq!(bench.filter("").status, 3);
+    assert!(!stray.exists() && other.exists() && !bench.path("out/.bandproof-journal").exists());
+}
+
+#[cfg(unix)]
+#[test]
+fn two_runs_into_one_folder_do_not_meet() {
+    let bench = bench();
+    fs::create_dir(bench.path("out")).unwrap();
+    let held = fs::File::open(bench.path("out")).unwrap();
+    held.try_lock().unwrap();
+    let refused = bench.filter("");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("another run is writing into out"), "{}", refused.stderr);
+    assert!(bench.tree("out").is_empty());
+    // To look does no harm.
+    assert_eq!(bench.filter("--dry-run").status, 3);
+    drop(held);
+    assert_eq!(bench.filter("").status, 3);
+}
+
+/// Interrupted once so many bytes went through.
+struct After {
+    limit: u64,
+    bytes: AtomicU64,
+}
+
+impl Progress for After {
+    fn planned(&self, _recordings: u64, _bytes: u64) {}
+
+    fn advanced(&self, bytes: u64) {
+        self.bytes.fetch_add(bytes, Ordering::SeqCst);
+    }
+
+    fn finished(&self, _path: &str, _failed: Option<&str>) {}
+
+    fn interrupted(&self) -> bool {
+        self.bytes.load(Ordering::SeqCst) >= self.limit
+    }
+}
+
+fn library_job(bench: &Bench) -> FilterJob {
+    FilterJob {
+        spec: bandproof::spec::load(Path::new(&bench.path("spec.toml"))).unwrap(),
+        spec_path: None,
+        input: bench.path("in"),
+        output: bench.path("out"),
+        report: None,
+        table: None,
+        emit: None,
+        replace: false,
+        include: Vec::new(),
+        exclude: Vec::new(),
+        jobs: 1,
+        dry_run: false,
+        scan: false,
+    }
+}
+
+#[test]
+fn an_open_recording_is_dropped_and_the_next_run_does_it() {
+    let bench = bench();
+    bench.filter("");
+    let (report, tree) = (lasting(&bench), bench.tree("in"));
+    fs::remove_dir_all(bench.path("out")).unwrap();
+    // Largest first: d, c, b, a, of 96 000 to 48 000 bytes; each is a block or two long.
+    for (limit, done) in [(1, 0), (96_001, 1), (176_001, 2), (240_001, 3)] {
+        let after = After { limit, bytes: AtomicU64::new(0) };
+        let outcome = job::run(&library_job(&bench), &after).unwrap();
+        assert_eq!((outcome.complete, outcome.summary.done + outcome.summary.failed), (false, done), "{limit}");
+        assert_eq!(outcome.not_done, 5 - done, "{limit}");
+        let left = bench.report();
+        assert_eq!(left["complete"], false, "{limit}");
+        let listed = left["recordings"].as_array().unwrap().iter().map(|one| one["path"].as_str().unwrap());
+        let outputs: Vec<String> = bench.tree("out").into_iter().map(|(name, _)| name).collect();
+        let expected: Vec<&str> = listed.chain(["bandproof-report.json"]).collect();
+        let mut sorted = expected.clone();
+        sorted.sort_unstable();
+        assert_eq!(outputs, sorted, "{limit}: nothing half-written, no journal");
+        let rest = bench.filter("");
+        assert_eq!(rest.status, 3, "{}", rest.stderr);
+        assert_eq!(lasting(&bench), report, "{limit}");
+        fs::remove_dir_all(bench.path("out")).unwrap();
+    }
+    assert_eq!(bench.tree("in"), tree);
+}
+
+/// Does something when the first bytes went through.
+struct Meddler<'a>(&'a (dyn Fn() + Sync), std::sync::Once);
+
+impl Progress for Meddler<'_> {
+    fn planned(&self, _recordings: u64, _bytes: u64) {
+        self.1.call_once(self.0);
+    }
+
+    fn advanced(&self, _bytes: u64) {}
+
+    fn finished(&self, _path: &str, _failed: Option<&str>) {}
+}
+
+#[test]
+fn an_output_that_somebody_wrote_while_a_run_goes_on_is_not_written_over() {
+    let bench = bench();
+    bench.filter("");
+    bench.input("b.wav", &wav16(8000, 1, &hum_and_noise(8000, 4.0, 0.1, 9)));
+    let write = || drop(bench.write("out/b.wav", b"mine"));
+    let outcome = job::run(&library_job(&bench), &Meddler(&write, std::sync::Once::new())).unwrap();
+    assert_eq!((outcome.summary.done, outcome.summary.failed), (3, 2));
+    assert_eq!(fs::read(bench.path("out/b.wav")).unwrap(), b"mine");
+}
+
+#[test]
+fn a_recording_that_was_written_to_while_it_was_read_is_not_done() {
+    let bench = bench();
+    let touch = || {
+        let then = SystemTime::now() + std::time::Duration::from_secs(7);
+        fs::File::options().write(true).open(bench.path("in/b.wav")).unwrap().set_modified(then).unwrap();
+    };
+    // Between its opening and its end: with one thread the largest come first.
+    struct Late<'a>(&'a (dyn Fn() + Sync), AtomicU64);
+    impl Progress for Late<'_> {
+        fn planned(&self, _recordings: u64, _bytes: u64) {}
+        fn advanced(&self, bytes: u64) {
+            // `far/d.wav` and `far/c.wav` have 96 000 and 80 000 bytes of samples.
+            let before = self.1.fetch_add(bytes, Ordering::SeqCst);
+            if before <= 176_000 && before + bytes > 176_000 {
+                (self.0)();
+            }
+        }
+        fn finished(&self, _path: &str, _failed: Option<&str>) {}
+    }
+    job::run(&library_job(&bench), &Late(&touch, AtomicU64::new(0))).unwrap();
+    let report = bench.report();
+    assert!(entry(&report, "b.wav")["error"].to_string().contains("changed"), "{}", entry(&report, "b.wav")["error"]);
+    assert!(!bench.path("out/b.wav").exists());
+    assert_eq!(report["summary"]["done"], 3);
+}
+
+#[test]
+fn another_dataset_with_the_same_names_is_not_written_over() {
+    let bench = bench();
+    bench.filter("");
+    let tree = bench.tree("out");
+    for (seed, name) in NAMES.iter().enumerate() {
+        bench.input(name, &wav16(8000, 1, &hum_and_noise(8000, 3.0, 0.1, 50 + seed as u64)));
+    }
+    let refused = bench.filter("");
+    assert_eq!(refused.status, 2, "{}", refused.stdout);
+    assert!(refused.stderr.contains("made from other recordings of the same names"), "{}", refused.stderr);
+    assert_eq!(bench.tree("out"), tree);
+    assert_eq!(bench.filter("--replace").status, 3);
+}
+
+#[test]
+fn a_journal_over_more_recordings_is_not_thrown_away() {
+    let bench = bench();
+    bench.filter("");
+    let sha256 = bench.report()["spec"]["file_sha256"].as_str().unwrap().to_owned();
+    let text = journal(&bench, &sha256);
+    fs::remove_file(bench.path("out/bandproof-report.json")).unwrap();
+    bench.write("out/.bandproof-journal", text.as_bytes());
+    let tree = bench.tree("out");
+    let refused = bench.filter("--include far/*");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("broken off and did also a.wav"), "{}", refused.stderr);
+    assert_eq!(bench.tree("out"), tree);
+    assert!(bench.filter("").stdout.contains("4 by an earlier run"));
+}
+
+#[test]
+fn an_interrupt_before_the_first_recording_leaves_nothing() {
+    let bench = bench();
+    let asked = After { limit: 0, bytes: AtomicU64::new(0) };
+    assert!(matches!(job::run(&library_job(&bench), &asked), Err(JobError::Interrupted(_))));
+    assert!(!bench.path("out").exists());
+}
+
+#[test]
+fn looking_at_what_was_done_can_be_interrupted() {
+    let bench = bench();
+    bench.filter("");
+    let tree = bench.tree("out");
+    let after = After { limit: 1, bytes: AtomicU64::new(0) };
+    assert!(matches!(job::run(&library_job(&bench), &after), Err(JobError::Interrupted(_))));
+    assert_eq!(bench.tree("out"), tree);
+}
+
+/// The first line of a journal of this job, and an entry a line.
+fn journal(bench: &Bench, spec_sha256: &str) -> String {
+    let version = env!("CARGO_PKG_VERSION");
+    let mut text = format!("{{\"format\":1,\"tool_version\":\"{version}\",\"spec_sha256\":\"{spec_sha256}\"}}\n");
+    for recording in bench.report()["recordings"].as_array().unwrap() {
+        text.push_str(&serde_json::to_string(recording).unwrap());
+        text.push('\n');
+    }
+    text
+}
+
+#[test]
+fn a_journal_counts_as_far_as_it_is_whole() {
+    let bench = bench();
+    bench.filter("");
+    let whole = lasting(&bench);
+    let spec_sha256 = bench.report()["spec"]["file_sha256"].as_str().unwrap().to_owned();
+    let text = journal(&bench, &spec_sha256);
+    let lines: Vec<&str> = text.lines().collect();
+    let outputs = NAMES.map(|name| fs::read(bench.path(&format!("out/{name}"))).unwrap());
+    let garbled = text.replacen("\"a.wav\"", "\"a.w\u{fffd}", 1);
+    let other_spec = journal(&bench, &"0".repeat(64));
+    let failed = format!("{text}{}\n", lines[1].replacen("\"done\"", "\"failed\"", 1));
+    // What is in the journal, and which recordings it has done.
+    let cases: [(&str, &str, &[&str]); 6] = [
+        ("whole", &text, &NAMES),
+        ("cut in its last line", &text[..text.len() - 5], &NAMES),
+        ("cut in a recording", &text[..lines[0].len() + lines[1].len() + 40], &NAMES[..1]),
+        ("damaged in the middle", &garbled, &NAMES[1..]),
+        ("of another spec", &other_spec, &[]),
+        ("with a later failure that left the output", &failed, &NAMES),
+    ];
+    for (what, text, done) in cases {
+        fs::remove_dir_all(bench.path("out")).unwrap();
+        bench.write("out/.bandproof-journal", text.as_bytes());
+        for (name, bytes) in NAMES.iter().zip(&outputs).filter(|(name, _)| done.contains(name)) {
+            bench.write(&format!("out/{name}"), bytes);
+        }
+        let open: Vec<&str> = NAMES.into_iter().filter(|name| !done.contains(name)).collect();
+        assert_eq!(to_do(&bench, ""), open, "{what}");
+        let ran = bench.filter("");
+        assert_eq!(ran.status, 3, "{what}: {}", ran.stderr);
+        assert_eq!(lasting(&bench), whole, "{what}");
+        assert!(!bench.path("out/.bandproof-journal").exists(), "{what}");
+    }
+}
+
+#[test]
+fn an_output_without_an_entry_is_somebody_elses() {
+    let bench = bench();
+    bench.filter("");
+    let report = bench.report();
+    assert_eq!(entry(&report, "b.wav")["status"], "done");
+    fs::remove_file(bench.path("out/bandproof-report.json")).unwrap();
+    let tree = bench.tree("out");
+    let refused = bench.filter("");
+    assert_eq!(refused.status, 2);
+    assert!(refused.stderr.contains("a.wav exists already and so do 3 other files to be written: give --replace"));
+    assert_eq!(bench.tree("out"), tree);
+}
