@@ -2,17 +2,19 @@
 
 use super::files::{self, Look, State};
 use super::findings::{Disagreement, Findings, Recordings, Unreadable};
-use super::listing::{Expected, Listed, Listing, hash};
+use super::listing::{Expected, Listed, Listing};
 use super::rates::Rates;
 use super::replay::{self, Replayed};
 use super::roots::{Root, Roots};
 use super::summary;
 use super::{AgainCounts, Command, FileCounts, RecheckJob, Side};
 use crate::files::digest::BUFFER_BYTES;
+use crate::files::digest::of_hexadecimal;
 use crate::job::Progress;
 use std::cmp::Reverse;
+use std::io;
 use std::path::Path;
-use std::sync::atomic::{AtomicUsize, Ordering};
+use std::sync::atomic::{AtomicBool, AtomicUsize, Ordering};
 use std::sync::{Mutex, PoisonError};
 
 /// A recheck in work.
@@ -23,7 +25,7 @@ pub(super) struct Check<'a> {
     rates: Option<&'a Rates>,
     found: Found,
     /// Whether an interruption left something out.
-    left_out: bool,
+    left_out: AtomicBool,
 }
 
 /// What one thread, or all together, found.
@@ -50,7 +52,7 @@ impl Found {
 
 impl<'a> Check<'a> {
     pub(super) fn new(job: &'a RecheckJob, listing: &'a Listing, roots: &'a Roots, rates: Option<&'a Rates>) -> Self {
-        Check { job, listing, roots, rates, found: Found::default(), left_out: false }
+        Check { job, listing, roots, rates, found: Found::default(), left_out: AtomicBool::new(false) }
     }
 
     /// Looks at every file that the report lists and for those that it does not.
@@ -79,7 +81,9 @@ impl<'a> Check<'a> {
             }
             all.lock().unwrap_or_else(PoisonError::into_inner).add(found);
         });
-        self.left_out = next.into_inner() < order.len();
+        if next.into_inner() < order.len() {
+            *self.left_out.get_mut() = true;
+        }
         self.found.add(all.into_inner().unwrap_or_else(PoisonError::into_inner));
         self.unlisted(progress);
     }
@@ -96,7 +100,7 @@ impl<'a> Check<'a> {
             let path = self.roots.output.locate(entry);
             let mut read = |bytes| {
                 found.outputs.bytes_read += bytes;
-                progress.advanced(bytes);
+                progress.pass(bytes).map_err(io::Error::other)
             };
             let state = match files::look(path.as_deref()) {
                 Look::Settled(state) => state,
@@ -105,7 +109,7 @@ impl<'a> Check<'a> {
                     None => State::Missing,
                 },
             };
-            enter(state, &after.expected, self.roots.output.shown(entry), Side::Output, found, progress);
+            self.enter(state, &after.expected, self.roots.output.shown(entry), Side::Output, found, progress);
         }
         if let Some(root) = &self.roots.input {
             self.input(entry, root, buffer, found, progress);
@@ -126,7 +130,7 @@ impl<'a> Check<'a> {
                 }
                 _ => {
                     let unknown = Expected { bytes: 0, sha256: None };
-                    enter(State::Missing, &unknown, &entry.path, Side::Input, found, progress);
+                    self.enter(State::Missing, &unknown, &entry.path, Side::Input, found, progress);
                 }
             }
             if let (Some(rates), Some(path)) = (replay_rates, &path) {
@@ -139,7 +143,7 @@ impl<'a> Check<'a> {
             (Look::There(_), None) => return,
             (Look::Settled(state), _) => {
                 found.replay.not_done += u64::from(replay_rates.is_some());
-                enter(state, expected, &entry.path, Side::Input, found, progress);
+                self.enter(state, expected, &entry.path, Side::Input, found, progress);
                 return;
             }
         };
@@ -154,12 +158,12 @@ impl<'a> Check<'a> {
             _ => {
                 let mut read = |bytes| {
                     found.inputs.bytes_read += bytes;
-                    progress.advanced(bytes);
+                    progress.pass(bytes).map_err(io::Error::other)
                 };
                 files::check(path, bytes, expected, buffer, &mut read)
             }
         };
-        enter(state, expected, &entry.path, Side::Input, found, progress);
+        self.enter(state, expected, &entry.path, Side::Input, found, progress);
     }
 
     fn replay(
@@ -170,7 +174,11 @@ impl<'a> Check<'a> {
         found: &mut Found,
         progress: &dyn Progress,
     ) -> Replayed {
-        let replayed = replay::replay(path, rates, &|bytes| progress.advanced(bytes));
+        let replayed = replay::replay(path, rates, &|bytes| progress.pass(bytes));
+        if progress.interrupted() {
+            self.left_out.store(true, Ordering::Relaxed);
+            return replayed;
+        }
         // Not readable then and not readable now is the same.
         let failed_again = match (&replayed, &entry.error) {
             (Replayed::NotRead(State::Unreadable(error)), Some(_)) => Some(Replayed::Failed(error.clone())),
@@ -188,13 +196,13 @@ impl<'a> Check<'a> {
         sides.extend(input.as_ref().map(|input| (input, Some(output), Side::Input)));
         for (root, other, side) in sides {
             let mut new = root.unlisted(self.listing, other);
-            if let Some(noise) = self.listing.noise_sha256.as_deref().and_then(hash) {
+            if let Some(noise) = self.listing.noise_sha256.as_deref().and_then(of_hexadecimal) {
                 // The report knows the recording of the idle device by its hash alone.
                 let mut buffer = vec![0; BUFFER_BYTES];
                 new.retain(|(_, path)| {
                     // Each is read to its end, and there may be many.
                     if progress.interrupted() {
-                        self.left_out = true;
+                        *self.left_out.get_mut() = true;
                         return false;
                     }
                     !files::is(path, &noise, &mut buffer)
@@ -202,7 +210,10 @@ impl<'a> Check<'a> {
             }
             let counts = if side == Side::Output { &mut self.found.outputs } else { &mut self.found.inputs };
             counts.new += new.len() as u64;
-            self.found.disagreements.extend(new.into_iter().map(|(path, _)| Disagreement::New { path, side }));
+            // An interrupted run has not come to them.
+            if self.listing.head.complete {
+                self.found.disagreements.extend(new.into_iter().map(|(path, _)| Disagreement::New { path, side }));
+            }
             let failed = |unreadable: &Unreadable| {
                 // The run before could not look into it either; of two folders it says which.
                 let path = match (self.listing.command, side) {
@@ -217,6 +228,34 @@ impl<'a> Check<'a> {
         }
     }
 
+    /// Counts a file; what can't be read is told at once. A file given up half-way counts
+    /// as left out.
+    fn enter(
+        &self,
+        state: State,
+        expected: &Expected,
+        shown: &str,
+        side: Side,
+        found: &mut Found,
+        progress: &dyn Progress,
+    ) {
+        if progress.interrupted() {
+            self.left_out.store(true, Ordering::Relaxed);
+            return;
+        }
+        let counts = if side == Side::Output { &mut found.outputs } else { &mut found.inputs };
+        match state.enter(counts, expected, shown, side) {
+            Ok(disagreement) => {
+                found.disagreements.extend(disagreement);
+                progress.finished(shown, None);
+            }
+            Err(error) => {
+                progress.finished(shown, Some(&error));
+                found.unreadable.push(Unreadable { path: shown.to_owned(), side, error });
+            }
+        }
+    }
+
     /// Takes in what measuring again found.
     pub(super) fn add(&mut self, found: Found) {
         self.found.add(found);
@@ -225,8 +264,13 @@ impl<'a> Check<'a> {
     /// Everything found, in order.
     pub(super) fn finish(self, interrupted: bool) -> Findings {
         let Check { job, listing, roots, rates, mut found, left_out } = self;
+        let inputs = roots.input.as_ref().map(|_| found.inputs);
+        let incomplete = (!listing.head.complete).then_some(Disagreement::Incomplete {
+            inputs_not_listed: inputs.map(|inputs| inputs.new),
+            outputs_not_listed: found.outputs.new,
+        });
         let report = summary::counts(listing).map(|what| Disagreement::Report { what });
-        let mut disagreements: Vec<Disagreement> = report.collect();
+        let mut disagreements: Vec<Disagreement> = incomplete.into_iter().chain(report).collect();
         disagreements.extend(rates.into_iter().flat_map(|rates| rates.disagreements.clone()));
         disagreements.append(&mut found.disagreements);
         // Stable: what belongs to one recording stays in the order in which it was found.
@@ -234,7 +278,7 @@ impl<'a> Check<'a> {
         found.unreadable.sort();
         found.unreadable.dedup();
         // Measuring comes last, and nobody counts how far it came.
-        let finished = !(interrupted && (left_out || job.remeasure));
+        let finished = !(interrupted && (left_out.into_inner() || job.remeasure));
         let done = listing.entries.iter().filter(|entry| entry.done()).count() as u64;
         let listed = listing.entries.len() as u64;
         Findings {
@@ -247,26 +291,11 @@ impl<'a> Check<'a> {
             input_root: roots.input.as_ref().map(|root| root.path.display().to_string()),
             recordings: Recordings { listed, done, failed: listed - done },
             outputs: found.outputs,
-            inputs: roots.input.as_ref().map(|_| found.inputs),
+            inputs,
             replay: job.replay.then_some(found.replay),
             remeasure: job.remeasure.then_some(found.remeasure),
             disagreements,
             unreadable: found.unreadable,
-        }
-    }
-}
-
-/// Counts a file; what can't be read is told at once.
-fn enter(state: State, expected: &Expected, shown: &str, side: Side, found: &mut Found, progress: &dyn Progress) {
-    let counts = if side == Side::Output { &mut found.outputs } else { &mut found.inputs };
-    match state.enter(counts, expected, shown, side) {
-        Ok(disagreement) => {
-            found.disagreements.extend(disagreement);
-            progress.finished(shown, None);
-        }
-        Err(error) => {
-            progress.finished(shown, Some(&error));
-            found.unreadable.push(Unreadable { path: shown.to_owned(), side, error });
         }
     }
 }

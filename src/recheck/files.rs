@@ -2,8 +2,7 @@
 
 use super::findings::{Disagreement, FileCounts, Side};
 use super::listing::{Expected, Hash, hex};
-use crate::files::digest;
-use std::fs::File;
+use crate::files::{digest, open};
 use std::io::{self, ErrorKind};
 use std::path::Path;
 
@@ -55,7 +54,7 @@ pub(super) fn check(
     bytes: u64,
     expected: &Expected,
     buffer: &mut [u8],
-    read: &mut dyn FnMut(u64),
+    read: &mut dyn FnMut(u64) -> io::Result<()>,
 ) -> State {
     if bytes != expected.bytes {
         return State::Changed { bytes, sha256: None };
@@ -73,11 +72,11 @@ pub(super) fn check(
 
 /// Whether a file has this hash.
 pub(super) fn is(path: &Path, sha256: &Hash, buffer: &mut [u8]) -> bool {
-    hash(path, buffer, &mut |_| ()).is_ok_and(|(found, _)| found == *sha256)
+    hash(path, buffer, &mut |_| Ok(())).is_ok_and(|(found, _)| found == *sha256)
 }
 
-fn hash(path: &Path, buffer: &mut [u8], read: &mut dyn FnMut(u64)) -> io::Result<(Hash, u64)> {
-    digest::of_reader(File::open(path)?, buffer, read)
+fn hash(path: &Path, buffer: &mut [u8], read: &mut dyn FnMut(u64) -> io::Result<()>) -> io::Result<(Hash, u64)> {
+    digest::of_reader(open::regular(path)?, buffer, read)
 }
 
 impl State {

@@ -15,7 +15,8 @@ pub struct Findings {
     pub agrees: bool,
     /// False where the recheck was interrupted.
     pub finished: bool,
-    /// What the report says of itself: false where its own run was interrupted.
+    /// What the report says of itself: false where its own run was interrupted, and then
+    /// there is a disagreement.
     pub report_complete: bool,
     /// Folder (or file) of the recordings after, as it was looked at.
     pub output_root: String,
@@ -133,6 +134,15 @@ pub enum Disagreement {
         /// Before or after.
         side: Side,
     },
+    /// The run that wrote the report was interrupted, so recordings are missing from the
+    /// report and not from the dataset: they are counted here and not named.
+    Incomplete {
+        /// Recordings before that the report does not list; null where inputs were not
+        /// looked at.
+        inputs_not_listed: Option<u64>,
+        /// Recordings after that it does not list.
+        outputs_not_listed: u64,
+    },
     /// The report does not agree with itself.
     Report {
         /// A sentence.
@@ -230,7 +240,7 @@ impl Disagreement {
     /// Place among what is told of one path.
     pub(super) fn rank(&self) -> (u8, Option<Side>) {
         match self {
-            Disagreement::Report { .. } => (0, None),
+            Disagreement::Incomplete { .. } | Disagreement::Report { .. } => (0, None),
             Disagreement::Design { .. } => (1, None),
             Disagreement::Changed { side, .. }
             | Disagreement::Missing { side, .. }
@@ -252,7 +262,7 @@ impl Disagreement {
             | Disagreement::Figure { path, .. }
             | Disagreement::Verdict { path, .. }
             | Disagreement::Entry { path, .. } => Some(path),
-            Disagreement::Report { .. } | Disagreement::Design { .. } => None,
+            Disagreement::Incomplete { .. } | Disagreement::Report { .. } | Disagreement::Design { .. } => None,
         }
     }
 }

@@ -2,7 +2,7 @@
 //! fill memory with figures that only `--remeasure` looks at.
 
 use super::{Command, RecheckError};
-use crate::files::digest::hexadecimal;
+use crate::files::digest::{hexadecimal, of_hexadecimal};
 use crate::job::paths;
 use crate::report::{Head, ReadError, Recording, Status, Summary, read_report};
 use std::collections::HashSet;
@@ -73,7 +73,7 @@ impl Listed {
         let own = |other: String| (other != path).then_some(other);
         let after = match (output, pair) {
             (Some(output), _) => Some(After {
-                expected: Expected { bytes: output.bytes, sha256: hash(&output.sha256) },
+                expected: Expected { bytes: output.bytes, sha256: of_hexadecimal(&output.sha256) },
                 path: own(output.path),
                 made: Some(Made {
                     peak_dbfs: output.peak_dbfs.map(|db| db.get()),
@@ -82,7 +82,7 @@ impl Listed {
                 }),
             }),
             (None, Some(pair)) => Some(After {
-                expected: Expected { bytes: pair.bytes, sha256: pair.sha256.as_deref().and_then(hash) },
+                expected: Expected { bytes: pair.bytes, sha256: pair.sha256.as_deref().and_then(of_hexadecimal) },
                 path: own(pair.path),
                 made: None,
             }),
@@ -91,7 +91,8 @@ impl Listed {
         Listed {
             escaped: notes.iter().any(|note| note == paths::ESCAPED_NOTE),
             rate_hz: input.as_ref().map(|input| input.rate_hz),
-            input: input.map(|input| Expected { bytes: input.bytes, sha256: input.sha256.as_deref().and_then(hash) }),
+            input: input
+                .map(|input| Expected { bytes: input.bytes, sha256: input.sha256.as_deref().and_then(of_hexadecimal) }),
             after,
             error,
             path,
@@ -184,15 +185,6 @@ fn listed_twice(entries: &[Listed]) -> Option<(usize, String)> {
         }
     }
     None
-}
-
-/// The bytes of a hash; `None` for what is no hash, which the reader let nothing pass.
-pub(super) fn hash(text: &str) -> Option<Hash> {
-    let mut bytes = [0; 32];
-    for (byte, digits) in bytes.iter_mut().zip(text.as_bytes().chunks(2)) {
-        *byte = u8::from_str_radix(std::str::from_utf8(digits).ok()?, 16).ok()?;
-    }
-    (text.len() == 64).then_some(bytes)
 }
 
 /// A hash as reports write it.

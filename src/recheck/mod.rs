@@ -22,6 +22,7 @@ use crate::files::place::real;
 use crate::job::documents::Document;
 use crate::job::guard::{self, Guarded};
 use crate::job::{IdleNoise, JobError, Progress};
+use crate::wave::RateMeaning;
 use check::{Check, Found};
 pub use error::RecheckError;
 pub use findings::{AgainCounts, Command, Disagreement, FileCounts, Findings, Recordings, Side, Unreadable};
@@ -29,6 +30,7 @@ use listing::Listing;
 use rates::Rates;
 use remeasure::Remeasure;
 use roots::Roots;
+use std::collections::HashSet;
 use std::io;
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
@@ -77,7 +79,10 @@ pub fn run(job: &RecheckJob, progress: &dyn Progress) -> Result<Findings, Rechec
     let roots = Roots::of(job, &listing)?;
     let again = job.replay || job.remeasure;
     let rates = if again { Some(Rates::of(&job.report, &listing)?) } else { None };
-    let noise = if job.remeasure { idle_noise(job, &listing)? } else { None };
+    let noise = match rates.as_ref().filter(|_| job.remeasure) {
+        Some(rates) => idle_noise(job, &listing, rates.spec.rate)?,
+        None => None,
+    };
     let table = job.csv.as_deref().filter(|_| job.remeasure);
     let table = table.map(|table| begin_table(job, table, &listing, &roots, progress)).transpose()?;
     let mut check = Check::new(job, &listing, &roots, rates.as_ref());
@@ -91,7 +96,11 @@ pub fn run(job: &RecheckJob, progress: &dyn Progress) -> Result<Findings, Rechec
 }
 
 /// The recording of the idle device, which must be the one that the report names.
-fn idle_noise(job: &RecheckJob, listing: &Listing) -> Result<Option<Arc<IdleNoise>>, RecheckError> {
+fn idle_noise(
+    job: &RecheckJob,
+    listing: &Listing,
+    rate: Option<RateMeaning>,
+) -> Result<Option<Arc<IdleNoise>>, RecheckError> {
     let Some(path) = &job.noise else {
         return match listing.noise_sha256 {
             Some(_) => Err(RecheckError::NeedsNoise(job.report.clone())),
@@ -105,7 +114,7 @@ fn idle_noise(job: &RecheckJob, listing: &Listing) -> Result<Option<Arc<IdleNois
         told,
         repair,
     };
-    let noise = IdleNoise::open(path).map_err(JobError::Noise)?;
+    let noise = IdleNoise::open(path, rate).map_err(JobError::Noise)?;
     let found = noise.sha256().to_owned();
     match &listing.noise_sha256 {
         Some(told) if *told == found => Ok(Some(Arc::new(noise))),
@@ -127,9 +136,12 @@ fn begin_table(
     guard::check(&Guarded {
         reads: recordings.chain([job.report.as_path()]).chain(job.noise.as_deref()).collect(),
         input: &input.path,
+        output: None,
         outputs: Vec::new(),
         documents: vec![("--csv", table)],
         replace: job.replace,
+        ours: HashSet::new(),
+        reason: None,
     })?;
     // A recording that is missing may come back.
     let place = real(table);

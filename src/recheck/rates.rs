@@ -4,7 +4,7 @@ use super::listing::Listing;
 use super::{Command, Disagreement, RecheckError};
 use crate::design::{Design, design};
 use crate::job::pair::PairTask;
-use crate::job::plan::{dither_name, treatment};
+use crate::job::plan::{dither_name, history, treatment};
 use crate::job::recording::Treatment;
 use crate::report::DesignEntry;
 use crate::section::Section;
@@ -43,7 +43,10 @@ impl Rates {
                         || Some("the report has recordings at this rate and no design".to_owned()),
                         |told| difference(told, &found, dither),
                     );
-                    rates.treatments.insert(rate_hz, treatment(&rates.spec, &found));
+                    // What the program appended that wrote the report, whichever version this is.
+                    let history = history(&rates.spec, &listing.head.tool_version, &listing.head.spec.file_sha256);
+                    let treatment = Treatment { history, ..treatment(&rates.spec, &found) };
+                    rates.treatments.insert(rate_hz, treatment);
                     if listing.command == Command::Measure {
                         rates.pairs.insert(rate_hz, PairTask::new(&rates.spec, &found));
                     }

@@ -10,14 +10,16 @@ use super::roots::Roots;
 use super::rows::Rows;
 use super::summary::verdicts;
 use super::{Command, RecheckError, RecheckJob};
+use crate::files::open;
 use crate::job::failure::{Failure, contained};
 use crate::job::memory::MemoryBudget;
 use crate::job::pair::{PairError, PairTask, remeasure};
 use crate::job::plan::Brief;
-use crate::job::{IdleNoise, PairNames, Progress, measure_pair};
-use crate::report::{BandEntry, ChannelEntry, DelaySource, NotFinite, Recording, Status, SummaryBuilder};
+use crate::job::{IdleNoise, PairNames, Pass, Progress, measure_pair};
+use crate::report::{
+    BandEntry, ChannelEntry, DelaySource, Finite, Input, NotFinite, Recording, Status, SummaryBuilder,
+};
 use crate::wave::{Reader, WaveError};
-use std::fs::File;
 use std::io::Write;
 use std::path::Path;
 use std::sync::mpsc::{Receiver, sync_channel};
@@ -116,6 +118,8 @@ impl Remeasure<'_> {
             None => Again::NotDone("the report changed while it was being read".to_owned()),
         };
         match again {
+            // Given up half-way.
+            Again::Failed(_) | Again::NotDone(_) if progress.interrupted() => None,
             Again::Measured(now) => {
                 let differing = compare(then, &now);
                 if differing.is_empty() {
@@ -150,10 +154,10 @@ impl Remeasure<'_> {
                 return Again::NotDone("a recording is missing or can't be read".to_owned());
             }
         }
-        let advanced = |bytes| progress.advanced(bytes);
+        let pass = |bytes| progress.pass(bytes);
         let measured = contained(|| match self.listing.command {
-            Command::Filter => self.filtered(entry, then, [&before, &after], budget, &advanced),
-            Command::Measure => self.pair(entry, then, [&before, &after], budget, &advanced),
+            Command::Filter => self.filtered(entry, then, [&before, &after], budget, &pass),
+            Command::Measure => self.pair(entry, then, [&before, &after], budget, &pass),
         });
         match measured {
             Ok(again) => again,
@@ -169,13 +173,14 @@ impl Remeasure<'_> {
         then: &Recording,
         files: [&Path; 2],
         budget: &MemoryBudget,
-        advanced: &(dyn Fn(u64) + Sync),
+        pass: &Pass<'_>,
     ) -> Result<Again, Failure> {
         let [before, after] = files;
-        let (before, after) = (File::open(before).map_err(Failure::Open)?, File::open(after).map_err(Failure::Open)?);
+        let (before, after) =
+            (open::regular(before).map_err(Failure::Open)?, open::regular(after).map_err(Failure::Open)?);
         let of = |side: &str, error: WaveError| Failure::Header(format!("the {side}: {error}"));
-        let before = Reader::open(before).map_err(|error| of("input", error))?;
-        let after = Reader::open(after).map_err(|error| of("output", error))?;
+        let before = Reader::open_as(before, self.rates.spec.rate).map_err(|error| of("input", error))?;
+        let after = Reader::open_as(after, self.rates.spec.rate).map_err(|error| of("output", error))?;
         let rate_hz = before.header().rate_hz;
         let Some(treatment) = self.rates.treatments.get(&rate_hz) else {
             return Ok(Again::Failed(format!("the report has no design for its sample rate, {rate_hz} Hz")));
@@ -183,8 +188,14 @@ impl Remeasure<'_> {
         let Some(made) = entry.after.as_ref().and_then(|after| after.made) else {
             return Ok(Again::NotDone("the report has no output for it".to_owned()));
         };
+        // What the header says; `compare` holds it against the report's.
+        let input = then.input.clone().map(|input| Input {
+            rate_hz,
+            time_expansion: Finite::ratio(rate_hz, before.header().header_rate_hz),
+            ..input
+        });
         let _room = budget.enter(&Brief::of(before.header()), treatment);
-        let figures = match remeasure(before, after, treatment, made.gain_db, advanced) {
+        let figures = match remeasure(before, after, treatment, made.gain_db, pass) {
             Ok(figures) => figures,
             Err(PairError::Before(error @ WaveError::Io { .. }) | PairError::After(error @ WaveError::Io { .. })) => {
                 return Ok(Again::NotDone(error.to_string()));
@@ -196,7 +207,7 @@ impl Remeasure<'_> {
             Ok(ChannelEntry { channel, bands: bands.collect::<Result<_, _>>()? })
         });
         let channels = channels.collect::<Result<_, NotFinite>>()?;
-        Ok(Again::Measured(Box::new(Recording { channels, ..then.clone() })))
+        Ok(Again::Measured(Box::new(Recording { input, channels, ..then.clone() })))
     }
 
     /// A pair that something else filtered.
@@ -206,9 +217,10 @@ impl Remeasure<'_> {
         then: &Recording,
         [before, after]: [&Path; 2],
         budget: &MemoryBudget,
-        advanced: &(dyn Fn(u64) + Sync),
+        pass: &Pass<'_>,
     ) -> Result<Again, Failure> {
-        let header = Reader::open(File::open(before).map_err(Failure::Open)?)?.header().clone();
+        let header =
+            Reader::open_as(open::regular(before).map_err(Failure::Open)?, self.rates.spec.rate)?.header().clone();
         let Some(task) = self.rates.pairs.get(&header.rate_hz) else {
             return Ok(Again::Failed(format!("the report has no design for its sample rate, {} Hz", header.rate_hz)));
         };
@@ -224,7 +236,7 @@ impl Remeasure<'_> {
         let names =
             PairNames { before: then.path.clone(), after: entry.after_path().to_owned(), escaped: entry.escaped };
         let _room = budget.enter(&Brief::of(&header), &task.treatment);
-        Ok(match measure_pair(before, after, &names, &task, advanced) {
+        Ok(match measure_pair(before, after, &names, &task, pass) {
             Ok(recording) => Again::Measured(Box::new(recording)),
             Err(why) => Again::Failed(why),
         })

@@ -3,14 +3,16 @@
 use super::AgainCounts;
 use super::files::{State, not_read};
 use super::findings::Disagreement;
-use super::listing::{Expected, Listed, hash, hex};
+use super::listing::{Expected, Listed, hex};
 use super::rates::Rates;
+use crate::files::digest::of_hexadecimal;
+use crate::files::open;
+use crate::job::Pass;
 use crate::job::failure::{Failure, contained};
 use crate::job::recording::{Processed, RecordingError, process};
 use crate::job::sink::Nowhere;
 use crate::report::Db;
 use crate::wave::{Reader, WaveError};
-use std::fs::File;
 use std::path::Path;
 
 /// What came of it.
@@ -24,19 +26,19 @@ pub(super) enum Replayed {
 }
 
 /// Filters the recording at `path` again; nothing is kept and nothing is measured.
-pub(super) fn replay(path: &Path, rates: &Rates, advanced: &(dyn Fn(u64) + Sync)) -> Replayed {
-    let file = match File::open(path) {
+pub(super) fn replay(path: &Path, rates: &Rates, pass: &Pass<'_>) -> Replayed {
+    let file = match open::regular(path) {
         Ok(file) => file,
         Err(error) => return Replayed::NotRead(not_read(&error)),
     };
     let done = contained(|| {
-        let reader = Reader::open(file)?;
+        let reader = Reader::open_as(file, rates.spec.rate)?;
         let rate_hz = reader.header().rate_hz;
         let unknown = || Failure::Header(format!("the report has no design for its sample rate, {rate_hz} Hz"));
         // Bands only decide what is measured.
         let mut treatment = rates.treatments.get(&rate_hz).ok_or_else(unknown)?.clone();
         treatment.bands.clear();
-        Ok(process(reader, Nowhere::default(), &treatment, advanced)?.1)
+        Ok(process(reader, Nowhere::default(), &treatment, pass)?.1)
     });
     match done {
         Ok(processed) => Replayed::Done(Box::new(processed)),
@@ -52,7 +54,7 @@ pub(super) fn input_state(processed: &Processed, bytes: u64, expected: &Expected
     match expected.sha256.as_ref().map(hex) {
         None => State::WithoutHash,
         Some(then) if then == processed.input.sha256 => State::Unchanged,
-        Some(_) => State::Changed { bytes, sha256: hash(&processed.input.sha256) },
+        Some(_) => State::Changed { bytes, sha256: of_hexadecimal(&processed.input.sha256) },
     }
 }
 

@@ -19,12 +19,17 @@ pub const DONE: [&str; 3] = ["a.wav", "station/b.wav", "station/two.WAV"];
 impl Dataset {
     /// Three recordings that are done and one that failed.
     pub fn new() -> Self {
+        Dataset::filtered(Dataset::unfiltered().bench)
+    }
+
+    /// The same recordings before anything is done with them.
+    pub fn unfiltered() -> Self {
         let bench = Bench::new(NOTCH_SPEC);
         bench.input("a.wav", &wav16(8000, 1, &hum_and_noise(8000, 3.0, 0.3, 1)));
         bench.input("station/b.wav", &wav16(8000, 1, &hum_and_noise(8000, 2.0, 0.0, 2)));
         bench.input("station/two.WAV", &wav(12_000, 2, 24, &hum_and_noise(12_000, 4.0, 0.2, 3)));
         bench.input("broken.wav", b"RIFF, and then nothing");
-        Dataset::filtered(bench)
+        Dataset { bench }
     }
 
     /// Filters what is in `in/`.

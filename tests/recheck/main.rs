@@ -14,6 +14,7 @@ mod fixtures;
 mod bad_reports;
 mod dataset;
 mod files;
+mod forms;
 mod interrupt;
 mod pairs;
 mod places;
