@@ -53,3 +53,38 @@ pub fn insert(plain: &[u8], before: &[Chunk], after: &[Chunk]) -> Vec<u8> {
     out.extend(body);
     out
 }
+
+/// `plain` as a recorder leaves it whose battery ends before it has gone back to write the
+/// sizes: both 0, and the last frame half on the card.
+pub fn unfinished(plain: &[u8]) -> Vec<u8> {
+    let (head, samples) = split(plain);
+    let mut out = head.to_vec();
+    for size in [4..8, head.len() - 4..head.len()] {
+        out[size].fill(0);
+    }
+    out.extend(&samples[..samples.len() - 1]);
+    out
+}
+
+/// `plain`, which has `frames` frames, with 64-bit sizes: RF64 as in EBU Tech 3306, `ds64`
+/// in front and 0xffffffff where sizes of 32 bits stood.
+pub fn rf64(plain: &[u8], frames: usize) -> Vec<u8> {
+    /// What `ds64` takes with its header.
+    const DS64_BYTES: usize = 36;
+    let (head, samples) = split(plain);
+    let riff_bytes = DS64_BYTES + plain.len() - 8;
+    let mut sizes = [riff_bytes, samples.len(), frames].map(|size| (size as u64).to_le_bytes()).concat();
+    // No other chunk needs a size of 64 bits.
+    sizes.extend(0u32.to_le_bytes());
+    let unknown = [0xff; 4];
+    let between = &head[12..head.len() - 4];
+    let parts: [&[u8]; 7] =
+        [b"RF64", &unknown, b"WAVE", &Chunk::new(b"ds64", sizes).bytes(), between, &unknown, samples];
+    parts.concat()
+}
+
+/// The file up to the samples, and those; nothing follows them where hound wrote the file.
+fn split(plain: &[u8]) -> (&[u8], &[u8]) {
+    let data = plain.windows(4).position(|id| id == b"data").unwrap_or(0);
+    plain.split_at(data + 8)
+}

@@ -12,7 +12,8 @@
 //! | `station-b/0512.wav` | 24 bit, stereo, 44.1 kHz | padding, broadcast and production metadata |
 //! | `station-b/0542.wav` | 24 bit, mono, 44.1 kHz | 3 s, too short for the hum bands; an odd number of data bytes |
 //! | `station-c/0512.wav` | 16 bit, mono, 44.1 kHz | pumps off, behind a low-cut: nothing to remove below 1 kHz |
-//! | `hydrophone/0512.wav` | 32-bit float, mono, 96 kHz | short; a knock beyond full scale |
+//! | `station-d/0512.wav` | 16 bit, mono, 44.1 kHz | cut off by a flat battery: sizes in the header are still 0, half a frame at the end |
+//! | `hydrophone/0512.wav` | 32-bit float, mono, 96 kHz, RF64 | short; a knock beyond full scale |
 //!
 //! Levels below are in dBFS: 0 dBFS is the level of a full-scale sine.
 
@@ -37,17 +38,12 @@ pub struct DemoFile {
 /// All files of the demo, in the order of their paths.
 pub fn files() -> Result<Vec<DemoFile>, hound::Error> {
     let ordinary = Scene { hum_hz: Some(50.02), boom: true, ..Scene::new(48_000, 10.0) };
+    let hydrophone = Scene { seed: 70, hum_hz: Some(50.01), hum_db: -38.0, knock: true, ..Scene::new(96_000, 2.5) };
     let recording = |path, bits, channels: &[Scene], before: &[Chunk], after: &[Chunk]| {
         wav(bits, channels).map(|plain| DemoFile { path, bytes: chunks::insert(&plain, before, after) })
     };
     Ok(vec![
-        recording(
-            "hydrophone/0512.wav",
-            32,
-            &[Scene { seed: 70, hum_hz: Some(50.01), hum_db: -38.0, knock: true, ..Scene::new(96_000, 2.5) }],
-            &[],
-            &[],
-        )?,
+        DemoFile { path: "hydrophone/0512.wav", bytes: chunks::rf64(&wav(32, &[hydrophone])?, hydrophone.frames()) },
         DemoFile { path: "notes.txt", bytes: text::NOTES.into() },
         DemoFile { path: "station-a/._0512.wav", bytes: text::dot_underscore() },
         recording(
@@ -96,6 +92,13 @@ pub fn files() -> Result<Vec<DemoFile>, hound::Error> {
             &[],
             &[text::info("Reed bed, station c, 05:12, pumps off")],
         )?,
+        DemoFile {
+            path: "station-d/0512.wav",
+            bytes: chunks::unfinished(&wav(
+                16,
+                &[Scene { seed: 90, hum_hz: Some(49.99), rate_hz: 44_100, seconds: 8.0, ..ordinary }],
+            )?),
+        },
     ])
 }
 

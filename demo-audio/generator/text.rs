@@ -16,6 +16,7 @@ Field notes, 2 May 2031
 
 Station b stopped by itself after three seconds at 05:42.
 Station c has its low-cut switched on; its pump is under repair.
+Station d was dead when we came to fetch it: battery flat.
 ";
 
 /// What some file systems leave beside a recording: a name that ends in .wav, but no

@@ -40,14 +40,24 @@ fn the_demo_stays_small_enough_to_clone() {
     assert!(total < 8_000_000, "{total} bytes");
 }
 
-/// Chunks in the order of the file, sizes and pad bytes followed by hand.
+/// Chunks in the order of the file, sizes and pad bytes followed by hand. In RF64 the size
+/// of `data` stands in `ds64` (EBU Tech 3306).
 fn chunks(bytes: &[u8]) -> Vec<(String, &[u8])> {
-    let size_at = |at: usize| u32::from_le_bytes([bytes[at], bytes[at + 1], bytes[at + 2], bytes[at + 3]]) as usize;
-    assert_eq!((&bytes[..4], &bytes[8..12]), (&b"RIFF"[..], &b"WAVE"[..]));
-    assert_eq!(size_at(4), bytes.len() - 8);
+    let number = |at: usize, length: usize| {
+        bytes[at..at + length].iter().rev().fold(0, |number, &byte| number << 8 | usize::from(byte))
+    };
+    let (size_at, wide_at) = (|at| number(at, 4), |at| number(at, 8));
+    assert_eq!(&bytes[8..12], b"WAVE");
+    let rf64 = &bytes[..4] == b"RF64";
+    if rf64 {
+        assert_eq!((&bytes[12..16], size_at(4), wide_at(20)), (&b"ds64"[..], u32::MAX as usize, bytes.len() - 8));
+    } else {
+        assert_eq!((&bytes[..4], size_at(4)), (&b"RIFF"[..], bytes.len() - 8));
+    }
     let (mut at, mut found) = (12, Vec::new());
     while at < bytes.len() {
-        let size = size_at(at + 4);
+        let wide = rf64 && &bytes[at..at + 4] == b"data";
+        let size = if wide { wide_at(28) } else { size_at(at + 4) };
         found.push((String::from_utf8_lossy(&bytes[at..at + 4]).into_owned(), &bytes[at + 8..at + 8 + size]));
         at += 8 + size + size % 2;
     }
@@ -55,8 +65,26 @@ fn chunks(bytes: &[u8]) -> Vec<(String, &[u8])> {
     found
 }
 
+/// The recording that the battery cut off, with the sizes that it should have.
+fn mended(bytes: &[u8]) -> Vec<u8> {
+    let samples = (bytes.len() - 44) / 2 * 2;
+    let mut mended = bytes[..44 + samples].to_vec();
+    mended[4..8].copy_from_slice(&(36 + samples as u32).to_le_bytes());
+    mended[40..44].copy_from_slice(&(samples as u32).to_le_bytes());
+    mended
+}
+
+const CUT_OFF: &str = "station-d/0512.wav";
+
 #[test]
-fn recordings_are_whole_and_of_the_formats_the_generator_lists() {
+fn one_recording_ends_within_a_frame_under_a_header_without_sizes() {
+    let bytes = fs::read(folder("demo-audio").join(CUT_OFF)).unwrap();
+    assert_eq!((&bytes[4..8], &bytes[36..44]), (&[0; 4][..], &b"data\0\0\0\0"[..]));
+    assert_eq!((bytes.len() - 44) % 2, 1, "16 bit, mono");
+}
+
+#[test]
+fn recordings_are_of_the_lengths_and_formats_the_generator_lists() {
     let expected = [
         ("hydrophone/0512.wav", 96_000, 1, 32, 240_000),
         ("station-a/0512.wav", 48_000, 1, 16, 480_000),
@@ -65,9 +93,11 @@ fn recordings_are_whole_and_of_the_formats_the_generator_lists() {
         ("station-b/0512.wav", 44_100, 2, 24, 396_900),
         ("station-b/0542.wav", 44_100, 1, 24, 132_301),
         ("station-c/0512.wav", 44_100, 1, 16, 352_800),
+        (CUT_OFF, 44_100, 1, 16, 352_799),
     ];
     for (path, rate_hz, channels, bits, frames) in expected {
         let bytes = fs::read(folder("demo-audio").join(path)).unwrap();
+        let bytes = if path == CUT_OFF { mended(&bytes) } else { bytes };
         let chunks = chunks(&bytes);
         let body = |id: &str| chunks.iter().find(|(found, _)| found == id).unwrap().1;
         let (format, data) = (body("fmt "), body("data"));
@@ -84,7 +114,8 @@ fn recordings_are_whole_and_of_the_formats_the_generator_lists() {
 fn only_the_knock_on_the_hydrophone_reaches_full_scale() {
     for file in generator::files().unwrap().iter().filter(|f| f.path.ends_with("12.wav") && !f.path.contains("._")) {
         let mut plain = b"RIFF\0\0\0\0WAVE".to_vec();
-        for (id, body) in chunks(&file.bytes).into_iter().filter(|(id, _)| id == "fmt " || id == "data") {
+        let bytes = if file.path == CUT_OFF { mended(&file.bytes) } else { file.bytes.clone() };
+        for (id, body) in chunks(&bytes).into_iter().filter(|(id, _)| id == "fmt " || id == "data") {
             plain.extend(id.bytes().chain((body.len() as u32).to_le_bytes()).chain(body.iter().copied()));
         }
         let mut reader = hound::WavReader::new(&plain[..]).unwrap();
@@ -108,6 +139,7 @@ fn metadata_stands_before_and_after_the_samples() {
     let ids = |path: &str| -> Vec<String> {
         chunks(&files.iter().find(|f| f.path == path).unwrap().bytes).into_iter().map(|(id, _)| id).collect()
     };
+    assert_eq!(ids("hydrophone/0512.wav"), ["ds64", "fmt ", "data"]);
     assert_eq!(ids("station-a/0512.wav"), ["fmt ", "wthr", "data", "LIST", "cue ", "LIST"]);
     assert_eq!(ids("station-b/0512.wav"), ["fmt ", "JUNK", "bext", "data", "iXML"]);
     assert_eq!(ids("station-b/0542.wav"), ["fmt ", "JUNK", "bext", "data"]);
