@@ -27,10 +27,10 @@ def make_recordings(folder, count, seconds):
     subprocess.run([sys.executable, HERE / "recordings.py", folder, str(count), str(seconds)], check=True)
 
 
-def run_tool(source, target, jobs, tool=TOOL):
+def run_tool(source, target, jobs, tool=TOOL, spec=SPEC):
     """Filters `source` into an empty `target`; returns seconds and peak memory in MiB."""
     shutil.rmtree(target, ignore_errors=True)
-    command = [os.fspath(a) for a in (tool, "filter", SPEC, source, target, "--jobs", str(jobs), "--quiet")]
+    command = [os.fspath(a) for a in (tool, "filter", spec, source, target, "--jobs", str(jobs), "--quiet")]
     started = time.perf_counter()
     child = os.posix_spawn(command[0], command, os.environ)
     _, status, usage = os.wait4(child, 0)
