@@ -20,6 +20,7 @@ fn spec() -> Spec {
     let hum = Row { width: Width::Hz(1.0), ..stop };
     Spec {
         reference_band: None,
+        rate: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),

@@ -30,6 +30,7 @@ pub fn reduce(from_hz: f64, to_hz: f64, reduce_db: f64) -> Spec {
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),
         reference_band: None,
+        rate: None,
         stages: Vec::new(),
         bands: vec![Band {
             name: "hum".to_owned(),
