@@ -96,6 +96,11 @@ fn chunks_are_looked_for_near_the_end_only_and_must_end_with_the_file() {
     // A known one may be followed by zeros that were reserved.
     let file = riff(&[fmt(), data(20).declaring(u32::MAX), raw(b"cue ", b"\0\0\0\0")]);
     assert_eq!(copy(&[&file[..], &[0; 500]].concat()).unwrap().header.data_bytes, 20);
+    // Silence is no room that was reserved, and far from the end a name must be known.
+    let silent = copy(&[&file[..], &[0; 200_000]].concat()).unwrap();
+    assert_eq!(silent.header.data_bytes, 200_032);
+    let far = riff(&[fmt(), data(20).declaring(u32::MAX), raw(b"zzzz", &[7; 70_000])]);
+    assert_eq!(copy(&far).unwrap().header.data_bytes, 70_028);
     // A picture of two megabytes.
     let picture = [&b"id3 "[..], &2_000_000u32.to_le_bytes(), &vec![7; 2_000_000]].concat();
     let file = riff(&[fmt(), data(20).declaring(0)]);
