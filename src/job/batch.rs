@@ -128,7 +128,7 @@ impl Batch<'_> {
         let (sink, processed) = process(reader, sink, &rate.treatment, &|bytes| self.record.progress.pass(bytes))?;
         sink.into_inner().map_err(|error| Failure::Write(error.into_error()))?;
         // Of a file that was written to while it was read, the length may be the same.
-        let now = fs::metadata(&planned.found.path).map_err(Failure::Open);
+        let now = fs::metadata(&planned.found.path);
         if now.is_ok_and(|now| now.modified().ok() != metadata.modified().ok()) {
             return Err(changed());
         }

@@ -26,6 +26,11 @@ pub(crate) enum Failure {
          the two recordings, or choose another output folder"
     )]
     Taken,
+    #[error(
+        "its output can't be written: {0}; a file with its name has come about while this run went on: see what it is, \
+         and run again with --replace if it may go"
+    )]
+    InTheWay(io::Error),
     #[error("a figure came out as no number ({0}); this is a defect of this program")]
     Figure(#[from] NotFinite),
     #[error("processing stopped with a defect of this program: {0}")]

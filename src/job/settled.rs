@@ -4,6 +4,7 @@ use super::failure::Failure;
 use crate::files::place::Identity;
 use crate::files::temporary;
 use std::collections::HashSet;
+use std::io;
 use std::path::Path;
 use std::sync::{Mutex, PoisonError};
 use tempfile::NamedTempFile;
@@ -30,7 +31,10 @@ impl Settled {
         if replace && Identity::of_entry(target).is_some_and(|there| settled.contains(&there)) {
             return Err(Failure::Taken);
         }
-        temporary::settle(file, target, replace).map_err(Failure::Write)?;
+        temporary::settle(file, target, replace).map_err(|cause| match cause.kind() {
+            io::ErrorKind::AlreadyExists => Failure::InTheWay(cause),
+            _ => Failure::Write(cause),
+        })?;
         settled.extend(Identity::of_entry(target));
         Ok(())
     }
