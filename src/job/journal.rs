@@ -72,6 +72,22 @@ pub struct Older {
     pub bytes: u64,
 }
 
+/// Entries of the recordings done so far.
+#[derive(Debug)]
+pub struct Journal {
+    /// `None` where the file has no name.
+    path: Option<PathBuf>,
+    inner: Mutex<Inner>,
+}
+
+#[derive(Debug)]
+struct Inner {
+    file: File,
+    end: u64,
+    /// Where each recording's latest entry stands: offset and length.
+    entries: BTreeMap<Key, (u64, usize)>,
+}
+
 impl Inner {
     fn line(&mut self, offset: u64, bytes: usize) -> io::Result<String> {
         self.file.seek(SeekFrom::Start(offset))?;
@@ -90,22 +106,6 @@ impl Inner {
         self.end += line.len() as u64;
         Ok(place)
     }
-}
-
-/// Entries of the recordings done so far.
-#[derive(Debug)]
-pub struct Journal {
-    /// `None` where the file has no name.
-    path: Option<PathBuf>,
-    inner: Mutex<Inner>,
-}
-
-#[derive(Debug)]
-struct Inner {
-    file: File,
-    end: u64,
-    /// Where each recording's latest entry stands: offset and length.
-    entries: BTreeMap<Key, (u64, usize)>,
 }
 
 /// A recording: its path as reported and, where that is escaped, the path itself, because
@@ -166,6 +166,22 @@ impl Journal {
     /// What the system says.
     pub fn nameless(folder: &Path) -> io::Result<Self> {
         Ok(Journal::of(tempfile::tempfile_in(folder)?, 0, None))
+    }
+
+    /// The journal that a killed run left, as [`read`] reads it, to be read in the order of
+    /// its recordings' paths.
+    ///
+    /// # Errors
+    /// What the system says.
+    pub fn reopen(folder: &Path, identity: &Identity) -> io::Result<Option<Self>> {
+        let mut entries = BTreeMap::new();
+        let file = lines(folder, identity, &mut |offset, bytes, line| {
+            let Line::Entry(recording) = line else { return Ok(()) };
+            let key = Key::new(&recording.path, Path::new(&recording.path));
+            entries.insert(key, (offset, bytes));
+            Ok(())
+        })?;
+        Ok(file.map(|file| Journal { path: None, inner: Mutex::new(Inner { file, end: 0, entries }) }))
     }
 
     fn of(file: File, end: u64, path: Option<PathBuf>) -> Self {
@@ -229,24 +245,6 @@ impl Journal {
 pub fn read(folder: &Path, identity: &Identity, each: &mut dyn FnMut(Line) -> io::Result<()>) -> io::Result<bool> {
     let lines = lines(folder, identity, &mut |_, _, line| each(line))?;
     Ok(lines.is_some())
-}
-
-impl Journal {
-    /// The journal that a killed run left, as [`read`] reads it, to be read in the order of
-    /// its recordings' paths.
-    ///
-    /// # Errors
-    /// What the system says.
-    pub fn reopen(folder: &Path, identity: &Identity) -> io::Result<Option<Self>> {
-        let mut entries = BTreeMap::new();
-        let file = lines(folder, identity, &mut |offset, bytes, line| {
-            let Line::Entry(recording) = line else { return Ok(()) };
-            let key = Key::new(&recording.path, Path::new(&recording.path));
-            entries.insert(key, (offset, bytes));
-            Ok(())
-        })?;
-        Ok(file.map(|file| Journal { path: None, inner: Mutex::new(Inner { file, end: 0, entries }) }))
-    }
 }
 
 /// Hands over each entry with its offset and length, and gives the file back.
