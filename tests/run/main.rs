@@ -13,6 +13,7 @@ mod batch;
 mod fixtures;
 mod guard;
 mod identity;
+mod interrupted;
 mod jobs;
 mod overload;
 mod recordings;
