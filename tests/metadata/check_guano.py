@@ -16,30 +16,12 @@ guano 1.0.16 splits lines at LF alone and takes no field without a value: record
 end their lines by LF or CR LF.
 """
 
-import math
-import struct
 import sys
 from pathlib import Path
 
+from recordings import RATE_HZ, chunk, recording
+
 NAMESPACE = "Bandproof"
-RATE_HZ = 48_000
-
-
-def chunk(name, body):
-    return name + struct.pack("<I", len(body)) + body + b"\0" * (len(body) % 2)
-
-
-def recording(before=b"", after=b"", seconds=2.0):
-    """A tone at 1 kHz over something like noise, 16 bits, mono, between chunks."""
-    frames = int(seconds * RATE_HZ)
-    state, codes = 1, []
-    for frame in range(frames):
-        state = (1_103_515_245 * state + 12_345) % 2**31
-        tone = 6000 * math.sin(2 * math.pi * 1000 * frame / RATE_HZ)
-        codes.append(round(tone + (state >> 20) - 1024))
-    fmt = chunk(b"fmt ", struct.pack("<HHIIHH", 1, 1, RATE_HZ, 2 * RATE_HZ, 2, 16))
-    chunks = fmt + before + chunk(b"data", struct.pack(f"<{frames}h", *codes)) + after
-    return b"RIFF" + struct.pack("<I", 4 + len(chunks)) + b"WAVE" + chunks
 
 
 FIELDS = [
