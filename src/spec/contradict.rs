@@ -6,9 +6,10 @@ use std::collections::HashMap;
 use super::error::Place;
 use super::problems::Problems;
 use super::read_band::ReadBand;
+use super::stages::Line;
 use super::suggest;
 use super::tree::{quote, show_hz};
-use super::types::{Extent, Line, Requirement, line_name};
+use super::types::{Extent, Requirement, line_name};
 
 /// Checks the bands against each other.
 pub(super) fn check(bands: &[ReadBand<'_>], problems: &mut Problems) {

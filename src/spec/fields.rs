@@ -28,6 +28,15 @@ impl<T> Got<T> {
         !matches!(self, Self::Absent)
     }
 
+    /// What a good value comes to.
+    pub fn map<U>(self, of: impl FnOnce(T) -> U) -> Got<U> {
+        match self {
+            Self::Absent => Got::Absent,
+            Self::Bad => Got::Bad,
+            Self::Is(value) => Got::Is(of(value)),
+        }
+    }
+
     /// The value where there is a good one.
     pub fn value(self) -> Option<T> {
         match self {
@@ -151,7 +160,7 @@ impl<'n> Fields<'n> {
 
     /// Looks a key up and reads it with `read`, which reports and gives nothing where
     /// the value is no good.
-    fn get<T>(&self, key: &str, read: impl FnOnce(&'n Node) -> Option<T>) -> Got<T> {
+    pub fn get<T>(&self, key: &str, read: impl FnOnce(&'n Node) -> Option<T>) -> Got<T> {
         match self.entry(key) {
             Some(entry) => read(&entry.node).map_or(Got::Bad, Got::Is),
             None if self.is_meant(key) => Got::Bad,
@@ -245,7 +254,7 @@ impl<'n> Fields<'n> {
             let found = match &node.value {
                 Value::Text(text) => text.clone(),
                 // `encoding = 16` and `dither = false` are near misses too.
-                Value::Number(number) => show_number(*number),
+                Value::Number(number) => show_number(number.value),
                 Value::Truth(truth) => truth.to_string(),
                 Value::Other(words) => words.clone(),
                 Value::List(_) | Value::Table(_) => String::new(),
@@ -256,9 +265,11 @@ impl<'n> Fields<'n> {
             }
             let choices = W::ALL.iter().map(|choice| choice.word()).collect::<Vec<_>>().join(", ");
             let shown = if is_text { quote(&found) } else { node.value.show() };
-            let repair = match suggest::word::<W>(&found) {
-                Some(near) => format!("did you mean \"{}\"? (one of {choices})", near.word()),
-                None => format!("choose one of {choices}"),
+            let repair = match (suggest::word::<W>(&found), W::ALL) {
+                (Some(near), [_]) => format!("did you mean \"{}\"?", near.word()),
+                (Some(near), _) => format!("did you mean \"{}\"? (one of {choices})", near.word()),
+                (None, [_]) => format!("write \"{choices}\", or remove it"),
+                (None, _) => format!("choose one of {choices}"),
             };
             problems.add(&node.place, format!("{key} can't be {shown}"), repair);
             None

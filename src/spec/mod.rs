@@ -2,24 +2,36 @@
 //!
 //! A file's bytes become a tree whose nodes know where they stand (`tree`), one
 //! typed reader turns the tree into the normalized types (`read`, over
-//! `fields`), and `contradict` looks at what only shows between entries. TOML
-//! and JSON part ways in the tree alone, so both go through the same checks. `keys` has
-//! the tables as they are written; from it `write` serializes a normalized spec, and
-//! `schema` makes the JSON Schema.
+//! `fields`), `contradict` looks at what only shows between entries, and `demands` at what
+//! the top level asks of them. TOML and JSON part ways in the tree alone, so both go through
+//! the same checks. `kind` says which keys go with which kind of stage. `keys` has the tables
+//! as they are written; from it `write` serializes a normalized spec, and `schema` makes the
+//! JSON Schema.
 //!
 //! Every problem of a file is reported at once, each with its place and a repair.
 
 mod contradict;
+mod demands;
+pub mod document;
 mod error;
 mod fields;
 mod keys;
+mod kind;
 mod problems;
 mod quantity;
 mod read;
 mod read_band;
+mod read_equalizer;
+mod read_filter;
+mod read_roots;
 mod read_stage;
+mod read_transfer;
+pub mod save;
 mod schema;
+mod schema_stage;
+mod stages;
 mod suggest;
+mod transfer;
 mod tree;
 mod tree_json;
 mod tree_toml;
@@ -31,6 +43,8 @@ use crate::files::digest::hexadecimal;
 pub use error::{Place, Problem, SpecError};
 pub(crate) use schema::kind_schema;
 pub use schema::schema;
+pub use stages::*;
+pub use transfer::*;
 pub use types::*;
 
 use std::fs::File;

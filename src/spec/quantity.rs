@@ -66,7 +66,7 @@ impl Quantity {
 /// Reads a finite number within the quantity's range, or says what is wrong with it.
 pub(super) fn number(node: &Node, key: &str, quantity: &Quantity, problems: &mut Problems) -> Option<f64> {
     let value = match &node.value {
-        Value::Number(value) => *value,
+        Value::Number(number) => number.value,
         other => {
             let mut repair = format!("write {}", quantity.plain());
             if let Some(plain) = plain_number(other, quantity) {

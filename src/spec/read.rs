@@ -1,16 +1,19 @@
-//! From the tree to the normalized spec: the top level, `[output]`, and what stages and
-//! bands share.
+//! From the tree to the normalized spec: the top level, `[output]`, `[auto]`, and what stages
+//! and bands share.
 
 use super::SpecSyntax;
 use super::contradict;
+use super::demands;
 use super::error::{Place, Problem};
 use super::fields::{Fields, Got};
 use super::problems::Problems;
 use super::quantity::{Low, Quantity};
 use super::read_band;
 use super::read_stage;
+use super::stages::{Family, Line, Row, Width};
 use super::tree::{Node, Value, quote, show_hz, show_number};
-use super::types::{BeyondHalfRate, Dither, OutputEncoding, OutputSpec, Overload, RateMeaning, Row, Spec, Width};
+use super::types::{Auto, BeyondHalfRate, Dither, OutputEncoding, OutputSpec, Overload, Phase, RateMeaning, Spec};
+use super::words::DesignWay;
 
 /// Half the highest sample rate that the 32-bit field of a WAV header can state, Hz: no
 /// frequency above it lies below half the rate of any recording.
@@ -36,8 +39,13 @@ pub(super) const HARMONICS: Quantity =
     Quantity { noun: "a whole number", unit: "", low: Low::From(1.0), high: MAX_HARMONICS };
 pub(super) const GAIN: Quantity = Quantity { noun: "a gain", unit: "dB", low: Low::From(-MAX_DB), high: MAX_DB };
 
+/// Most sections of a cascade that is found: as many as a row of 200 notches has.
+pub(super) const MAX_SECTIONS: Quantity =
+    Quantity { noun: "a whole number", unit: "", low: Low::From(1.0), high: 200.0 };
+
 pub(super) const TOP_KEYS: &[&str] =
-    &["title", "beyond_half_rate", "reference_band", "rate", "output", "stage", "band"];
+    &["title", "beyond_half_rate", "reference_band", "rate", "phase", "design", "auto", "output", "stage", "band"];
+pub(super) const AUTO_KEYS: &[&str] = &["family", "max_sections"];
 pub(super) const OUTPUT_KEYS: &[&str] = &["encoding", "dither", "overload", "gain_db", "history"];
 
 /// Reads a whole spec.
@@ -60,6 +68,8 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     let beyond_half_rate = fields.word("beyond_half_rate", problems).or(BeyondHalfRate::default());
     let reference = fields.text("reference_band", problems);
     let rate = fields.word::<RateMeaning>("rate", problems);
+    let phase = fields.word("phase", problems);
+    let auto = auto(&fields, problems);
     let output = match fields.entry("output") {
         Some(entry) => output(&entry.node, problems),
         None => Some(OutputSpec::default()),
@@ -67,7 +77,8 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     let stage_nodes = tables(&fields, "stage", problems);
     let band_nodes = tables(&fields, "band", problems);
     let nothing_written = |nodes: &Option<&[Node]>| nodes.is_some_and(<[Node]>::is_empty);
-    if nothing_written(&stage_nodes) && nothing_written(&band_nodes) && !fields.any_meant() {
+    let is_empty = nothing_written(&stage_nodes) && nothing_written(&band_nodes);
+    if is_empty && !auto.is_there() && !fields.any_meant() {
         let repair = match problems.syntax {
             SpecSyntax::Toml => "add a [[stage]] to filter or a [[band]] to measure",
             SpecSyntax::Json => "add a \"stage\" to filter or a \"band\" to measure",
@@ -77,6 +88,12 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
     let stages: Vec<_> = stage_nodes.unwrap_or_default().iter().map(|node| read_stage::stage(node, problems)).collect();
     let bands: Vec<_> = band_nodes.unwrap_or_default().iter().map(|node| read_band::band(node, problems)).collect();
     contradict::check(&bands, problems);
+    if auto.is_there() {
+        demands::auto(&fields, stages.len(), &bands, problems);
+    }
+    if let Got::Is(Phase::Zero) = phase {
+        demands::zero_phase(&stages, stage_nodes.unwrap_or_default(), problems);
+    }
     if let Got::Is(name) = reference {
         contradict::check_reference(&bands, name, fields.value_place("reference_band"), problems);
     }
@@ -85,6 +102,8 @@ fn top(root: &Node, problems: &mut Problems) -> Option<Spec> {
         beyond_half_rate: beyond_half_rate?,
         rate: rate.value(),
         output: output?,
+        phase: phase.or(Phase::default())?,
+        auto: auto.map(Some).or(None)?,
         reference_band: reference.value().map(str::to_owned),
         stages: stages.into_iter().collect::<Option<_>>()?,
         bands: bands.into_iter().map(read_band::ReadBand::finish).collect::<Option<_>>()?,
@@ -105,6 +124,23 @@ fn title(fields: &Fields<'_>, problems: &mut Problems) -> Option<Option<String>>
         return None;
     }
     Some(Some(text.to_owned()))
+}
+
+/// `design` and `[auto]`, one of which implies the other.
+fn auto(fields: &Fields<'_>, problems: &mut Problems) -> Got<Auto> {
+    let design = fields.word::<DesignWay>("design", problems);
+    let table = fields.get("auto", |node| {
+        let mut fields = Fields::open(node, "auto", problems)?;
+        fields.only(AUTO_KEYS, AUTO_KEYS, problems);
+        let family = fields.word::<Family>("family", problems).map(Some).or(None);
+        let max_sections = fields.whole("max_sections", &MAX_SECTIONS, problems).map(Some).or(None);
+        Some(Auto { family: family?, max_sections: max_sections? })
+    });
+    match (design, table) {
+        (Got::Bad, _) => Got::Bad,
+        (Got::Is(DesignWay::Auto), Got::Absent) => Got::Is(Auto::default()),
+        (_, table) => table,
+    }
 }
 
 fn output(node: &Node, problems: &mut Problems) -> Option<OutputSpec> {
@@ -194,7 +230,7 @@ fn holds(row: &Row, fields: &Fields<'_>, width_key: &str, problems: &mut Problem
         problems.add(fields.value_place(key), message, repair);
         return false;
     }
-    let told = |line: super::types::Line| line.from_hz < line.center_hz && line.center_hz < line.to_hz;
+    let told = |line: Line| line.from_hz < line.center_hz && line.center_hz < line.to_hz;
     if !row.lines().all(told) {
         let message = format!(
             "{key} makes lines so narrow at {} Hz that their edges fall onto the center",

@@ -43,6 +43,8 @@ pub(super) struct ReadBand<'n> {
     pub extent: Option<Extent>,
     /// What must hold in it.
     pub requirement: Option<Requirement>,
+    /// Where the key `residual_dbfs` stands, if it does.
+    pub residual_place: Option<&'n Place>,
     /// Where the key `except` stands, if it does.
     pub except_place: Option<&'n Place>,
     /// The places of the names in `except`.
@@ -64,6 +66,7 @@ pub(super) fn band<'n>(node: &'n Node, problems: &mut Problems) -> ReadBand<'n> 
         place: &node.place,
         extent: None,
         requirement: None,
+        residual_place: None,
         except_place: None,
         except_name_places: Vec::new(),
     };
@@ -81,6 +84,7 @@ pub(super) fn band<'n>(node: &'n Node, problems: &mut Problems) -> ReadBand<'n> 
     read.extent = extent(&fields, problems);
     let (requirement, except_name_places) = requirement(&fields, problems);
     read.requirement = requirement;
+    read.residual_place = fields.entry("residual_dbfs").map(|entry| &entry.key_place);
     read.except_place = fields.entry("except").map(|entry| &entry.key_place);
     read.except_name_places = except_name_places;
     read

@@ -6,13 +6,15 @@ use schemars::{JsonSchema, Schema, SchemaGenerator, json_schema};
 use serde_json::{Map, Value, json};
 use std::borrow::Cow;
 
-use super::keys::{BandKeys, SpecKeys, StageKeys};
+use super::keys::{BandKeys, SpecKeys};
+use super::kind::Kind;
 use super::quantity::{Low, Quantity};
-use super::read::{FREQUENCY, GAIN, HARMONICS, Q, Q_AT_ZERO_HZ, WIDTH};
+use super::read::{FREQUENCY, GAIN, HARMONICS, MAX_SECTIONS, Q, Q_AT_ZERO_HZ, WIDTH};
 use super::read_band::{FROM, KEEP, REDUCE, REQUIREMENTS, RESIDUAL};
-use super::read_stage::{self, BAND_KEYS, EDGE_KEYS, Kind, NOTCH_KEYS, RIPPLE, STOP, order_range};
-use super::types::{Band, Family, FilterKind, NotchStage, RateMeaning, Spec, Stage};
-use super::words::Word;
+use super::stages::WeightingStage;
+use super::transfer::{AnalogStage, DigitalStage};
+use super::types::{Band, Phase, RateMeaning, Spec};
+use super::words::{DesignWay, Word};
 use crate::schema::document;
 
 /// The JSON Schema (draft 2020-12) of spec files as a person writes them, in either
@@ -38,45 +40,18 @@ impl JsonSchema for Spec {
         let mut schema = SpecKeys::json_schema(generator);
         let some = |key: &str| json!({"required": [key], "properties": {key: {"minItems": 1}}});
         schema.insert("anyOf".to_owned(), json!([some("stage"), some("band")]));
-        schema
-    }
-}
-
-impl JsonSchema for Stage {
-    fn schema_name() -> Cow<'static, str> {
-        "Stage".into()
-    }
-
-    fn json_schema(generator: &mut SchemaGenerator) -> Schema {
-        let mut schema = StageKeys::json_schema(generator);
-        let [low, high, pass, stop] =
-            [FilterKind::Lowpass, FilterKind::Highpass, FilterKind::Bandpass, FilterKind::Bandstop]
-                .map(FilterKind::name);
-        let mut rules = vec![
-            rule("kind", &[low, high], takes(EDGE_KEYS, &["family", "order", "edge_hz"])),
-            rule(
-                "kind",
-                &[pass, stop],
-                one_of(
-                    takes(BAND_KEYS, &["family", "order"]),
-                    vec![
-                        one_way(&["edges_hz"], &["center_hz", "width_hz", "q", "harmonics"]),
-                        one_way(&["center_hz", "width_hz"], &["edges_hz", "q"]),
-                        one_way(&["center_hz", "q"], &["edges_hz", "width_hz"]),
-                    ],
-                ),
-            ),
-            rule(
-                "kind",
-                &[NotchStage::KIND_NAME],
-                one_of(
-                    takes(NOTCH_KEYS, &["center_hz"]),
-                    vec![one_way(&["width_hz"], &["q"]), one_way(&["q"], &["width_hz"])],
-                ),
-            ),
-        ];
-        rules.extend(family_rules());
-        schema.insert("allOf".to_owned(), rules.into());
+        let halves = [WeightingStage::KIND_NAME, DigitalStage::KIND_NAME, AnalogStage::KIND_NAME];
+        let whole = json!({"properties": {"kind": {"not": {"enum": halves}}}});
+        let zero = rule("phase", &[Phase::Zero.name()], json!({"properties": {"stage": {"items": whole}}}));
+        let bands = json!({
+            "contains": {"required": ["reduce_db"]},
+            "items": {"properties": {"residual_dbfs": false}},
+        });
+        let auto = json!({
+            "if": {"anyOf": [{"required": ["design"]}, {"required": ["auto"]}]},
+            "then": {"required": ["band"], "properties": {"stage": {"maxItems": 0}, "band": bands}},
+        });
+        schema.insert("allOf".to_owned(), json!([zero, auto]));
         schema
     }
 }
@@ -106,49 +81,17 @@ impl JsonSchema for Band {
 }
 
 /// What `then` says of a table whose `key` is one of `words`.
-fn rule(key: &str, words: &[&str], then: Value) -> Value {
+pub(super) fn rule(key: &str, words: &[&str], then: Value) -> Value {
     json!({"if": {"properties": {key: {"enum": words}}, "required": [key]}, "then": then})
 }
 
-/// A stage that may have the keys `known` and no other, and must have those of `required`.
-fn takes(known: &[&str], required: &[&str]) -> Value {
-    let others: Vec<_> = read_stage::KEYS.iter().copied().filter(|key| !known.contains(key)).collect();
-    one_way(required, &others)
-}
-
 /// Keys that must be there, and keys that must not.
-fn one_way(required: &[&str], without: &[&str]) -> Value {
+pub(super) fn one_way(required: &[&str], without: &[&str]) -> Value {
     json!({"required": required, "properties": forbidden(without)})
 }
 
-fn forbidden(keys: &[&str]) -> Map<String, Value> {
+pub(super) fn forbidden(keys: &[&str]) -> Map<String, Value> {
     keys.iter().map(|key| ((*key).to_owned(), false.into())).collect()
-}
-
-fn one_of(mut schema: Value, ways: Vec<Value>) -> Value {
-    if let Some(object) = schema.as_object_mut() {
-        object.insert("oneOf".to_owned(), ways.into());
-    }
-    schema
-}
-
-/// Order, ripple and stop band attenuation of each family, families of one rule together.
-fn family_rules() -> Vec<Value> {
-    let mut groups: Vec<(Value, Vec<&str>)> = Vec::new();
-    for &family in Family::ALL {
-        let choices = [("ripple_db", family.takes_ripple()), ("stop_db", family.takes_stop())];
-        let keys = |taken: bool| {
-            choices.into_iter().filter(|(_, takes)| *takes == taken).map(|(key, _)| key).collect::<Vec<_>>()
-        };
-        let mut rules = forbidden(&keys(false));
-        rules.insert("order".to_owned(), json!({"maximum": family.highest_order()}));
-        let then = json!({"required": keys(true), "properties": rules});
-        match groups.iter_mut().find(|(same, _)| *same == then) {
-            Some((_, names)) => names.push(family.name()),
-            None => groups.push((then, vec![family.name()])),
-        }
-    }
-    groups.into_iter().map(|(then, names)| rule("family", &names, then)).collect()
 }
 
 /// One of a choice of words.
@@ -165,12 +108,12 @@ fn text_without(forbidden: &str) -> Schema {
 }
 
 /// A number in the range of `quantity`.
-fn number(quantity: &Quantity) -> Schema {
+pub(super) fn number(quantity: &Quantity) -> Schema {
     in_range("number", quantity)
 }
 
 /// A whole number in the range of `quantity`.
-fn whole(quantity: &Quantity) -> Schema {
+pub(super) fn whole(quantity: &Quantity) -> Schema {
     in_range("integer", quantity)
 }
 
@@ -183,11 +126,12 @@ fn in_range(of: &str, quantity: &Quantity) -> Schema {
 }
 
 /// Whole numbers without a decimal point.
-fn plain(number: f64) -> Value {
+pub(super) fn plain(number: f64) -> Value {
     let whole = number as i64;
     if whole as f64 == number { whole.into() } else { number.into() }
 }
 
+/// Functions that give the schema of a key.
 macro_rules! parts {
     ($($name:ident => $schema:expr),+ $(,)?) => {
         $(
@@ -210,15 +154,14 @@ parts! {
         schema
     },
     rate => choice::<RateMeaning>(),
-    order => whole(&order_range(None)),
+    design => choice::<DesignWay>(),
+    max_sections => whole(&MAX_SECTIONS),
     frequency => number(&FREQUENCY),
     edges => json_schema!({"type": "array", "items": number(&FREQUENCY), "minItems": 2, "maxItems": 2}),
     width => number(&WIDTH),
     // The reader takes any Q and then says that the line reaches down to 0 Hz.
     q => number(&Quantity { low: Low::Above(Q_AT_ZERO_HZ), ..Q }),
     harmonics => whole(&HARMONICS),
-    ripple => number(&RIPPLE),
-    stop => number(&STOP),
     from => number(&FROM),
     reduce => number(&REDUCE),
     keep => number(&KEEP),
@@ -226,11 +169,15 @@ parts! {
     gain => number(&GAIN),
 }
 
+pub(super) use parts;
+
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::spec::read::{OUTPUT_KEYS, TOP_KEYS};
+    use crate::spec::kind;
+    use crate::spec::read::{AUTO_KEYS, OUTPUT_KEYS, TOP_KEYS};
     use crate::spec::read_band;
+    use crate::spec::read_transfer::SECTION_KEYS;
 
     fn keys(schema: &Value) -> Vec<&str> {
         let mut keys: Vec<_> = schema["properties"].as_object().unwrap().keys().map(String::as_str).collect();
@@ -244,7 +191,9 @@ mod tests {
         let tables = [
             (&schema, TOP_KEYS),
             (&schema["$defs"]["Output"], OUTPUT_KEYS),
-            (&schema["$defs"]["Stage"], read_stage::KEYS),
+            (&schema["$defs"]["Auto"], AUTO_KEYS),
+            (&schema["$defs"]["Stage"], kind::KEYS),
+            (&schema["$defs"]["Stage"]["properties"]["sections"]["items"], SECTION_KEYS),
             (&schema["$defs"]["Band"], read_band::KEYS),
         ];
         for (table, known) in tables {

@@ -1,15 +1,23 @@
 //! What an unknown key, word or name was probably meant to be.
 
-use super::read::{OUTPUT_KEYS, TOP_KEYS};
+use super::kind::KEYS as STAGE_KEYS;
+use super::read::{AUTO_KEYS, OUTPUT_KEYS, TOP_KEYS};
 use super::read_band::KEYS as BAND_KEYS;
-use super::read_stage::KEYS as STAGE_KEYS;
 use super::words::Word;
 
 /// Words that people write for a key, and the keys they may mean; the first one that
 /// fits the table is suggested. Lower case, without separators and unit.
 const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
     (&["edge", "cutoff", "fc", "corner", "passedge"], &["edge_hz", "edges_hz", "center_hz", "from_hz"]),
-    (&["edges", "cutoffs", "corners", "wn", "passband", "stopband"], &["edges_hz", "edge_hz", "from_hz"]),
+    (&["edges", "cutoffs", "corners", "wn", "passband"], &["edges_hz", "edge_hz", "from_hz"]),
+    (
+        &["stopedge", "stopbandedge", "stopfrequency", "stopfreq", "stopcorner", "fstop", "fs2", "ws"],
+        &["stop_edge_hz", "stop_edges_hz"],
+    ),
+    (
+        &["stopband", "stopedges", "stopbandedges", "stopfrequencies", "stoprange"],
+        &["stop_edges_hz", "stop_edge_hz", "edges_hz", "from_hz"],
+    ),
     (
         &["freq", "frequency", "f0", "hz", "f", "center", "centre", "centerfrequency", "centrefrequency", "notch"],
         &["center_hz", "edge_hz"],
@@ -20,9 +28,23 @@ const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
     (&["n", "filterorder"], &["order"]),
     (&["harmonic", "overtones", "multiples", "lines", "nharmonics", "numharmonics"], &["harmonics"]),
     (&["ripple", "rp", "passripple", "passbandripple", "maxripple"], &["ripple_db", "keep_db"]),
-    (&["rs", "stop", "stopatten", "stopattenuation", "stopbandattenuation"], &["stop_db", "reduce_db"]),
     (
-        &["attenuation", "atten", "attenuate", "depth", "reduce", "reduction", "suppress", "suppression", "rejection"],
+        &["rs", "stop", "stopatten", "stopattenuation", "stopbandattenuation"],
+        &["stop_db", "reduce_db", "stop_edge_hz", "stop_edges_hz"],
+    ),
+    (
+        &[
+            "attenuation",
+            "atten",
+            "attenuate",
+            "depth",
+            "reduce",
+            "reduction",
+            "suppress",
+            "suppression",
+            "rejection",
+            "cut",
+        ],
         &["reduce_db", "stop_db"],
     ),
     (&["keep", "tolerance", "tol", "flatness", "within", "deviation"], &["keep_db", "ripple_db"]),
@@ -37,8 +59,17 @@ const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
     (&["bits", "bitdepth", "format", "sampleformat", "subtype", "depth", "sampletype"], &["encoding"]),
     (&["dithering", "noiseshaping"], &["dither"]),
     (&["clipping", "clip", "overflow", "saturation", "onoverload"], &["overload"]),
-    (&["gain", "volume", "amplification"], &["gain_db"]),
-    (&["stages", "filters", "section", "sections"], &["stage"]),
+    (&["gain", "volume", "amplification", "boost", "cut", "level"], &["gain_db", "gain"]),
+    (&["k", "scale", "scaling"], &["gain"]),
+    (&["shelfslope", "steepness", "s"], &["slope"]),
+    (&["weighting", "weight", "standard", "network"], &["curve"]),
+    (&["num", "numer", "b", "bcoefficients", "feedforward"], &["numerator", "b"]),
+    (&["den", "denom", "a", "acoefficients", "feedback"], &["denominator", "a"]),
+    (&["sos", "biquads", "biquad", "section", "secondordersections"], &["sections", "stage"]),
+    (&["zero", "z"], &["zeros", "zeros_hz"]),
+    (&["pole", "p"], &["poles", "poles_hz"]),
+    (&["prewarp", "prewarping", "warp", "match", "matched", "matchfrequency", "matchedfrequency"], &["match_hz"]),
+    (&["stages", "filters", "sections"], &["stage"]),
     (&["bands", "requirement", "requirements", "limits"], &["band"]),
     (&["out", "outputs", "write"], &["output"]),
     (
@@ -54,13 +85,17 @@ const KEY_MEANINGS: &[(&[&str], &[&str])] = &[
             "ratemeaning",
             "timebase",
         ],
-        &["rate"],
+        &["rate", "rate_hz"],
     ),
     (&["codinghistory", "log", "provenance", "metadata", "appendhistory", "writehistory"], &["history"]),
     (
         &["reference", "ref", "refband", "referencerange", "zeroband", "normalizeband", "calibrationband", "levelband"],
         &["reference_band"],
     ),
+    (&["zerophase", "direction", "passes", "forwardbackward", "filtfilt", "causal", "phaseresponse"], &["phase"]),
+    (&["mode", "autodesign", "designmode", "automatic"], &["design"]),
+    (&["search", "autooptions", "automaticdesign"], &["auto"]),
+    (&["sectionlimit", "mostsections", "nsections", "sections", "sectioncount", "limit", "budget"], &["max_sections"]),
     (&["beyondnyquist", "nyquist", "abovehalfrate", "halfrate", "outofrange"], &["beyond_half_rate"]),
 ];
 
@@ -114,7 +149,11 @@ pub(super) fn key(written: &str, fitting: &[&'static str]) -> Option<&'static st
     }
     let written = bare(written);
     let stem = without_unit(&written);
-    let fitting: Vec<_> = fitting.iter().filter(|key| units_agree(&written, &bare(key))).copied().collect();
+    let mut fitting: Vec<_> = fitting.iter().filter(|key| units_agree(&written, &bare(key))).copied().collect();
+    if split_unit(&written).1.is_some() {
+        // `poles_khz` is nearer to `poles_hz` than to `poles`.
+        fitting.sort_by_key(|key| split_unit(&bare(key)).1.is_none());
+    }
     let same = |key: &&&'static str| bare(key) == written;
     let by_meaning = |text: &str| {
         let meant = KEY_MEANINGS.iter().filter(|(words, _)| words.contains(&text));
@@ -142,6 +181,7 @@ pub(super) fn home(written: &str) -> Option<&'static str> {
     let homes = [
         ("in output", OUTPUT_KEYS),
         ("in a stage", STAGE_KEYS),
+        ("in auto", AUTO_KEYS),
         ("in a band", BAND_KEYS),
         ("at the top of the spec, outside every table", TOP_KEYS),
     ];

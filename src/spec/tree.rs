@@ -1,6 +1,7 @@
 //! The tree both notations are read into: values that know their place.
 
 use super::error::Place;
+use super::transfer::Coefficient;
 
 /// A value and where it stands.
 #[derive(Clone, Debug)]
@@ -16,9 +17,9 @@ pub(super) struct Node {
 pub(super) enum Value {
     /// Text.
     Text(String),
-    /// A number, whole or not, possibly not finite. Whole numbers above 2^53 are rounded;
-    /// no key takes one.
-    Number(f64),
+    /// A number, whole or not, possibly not finite, with the place of its last digit. Whole
+    /// numbers above 2^53 are rounded; no key takes one but coefficients.
+    Number(Coefficient),
     /// A list.
     List(Vec<Node>),
     /// Keys and values in the order of the file. JSON can repeat a key.
@@ -77,7 +78,7 @@ impl Value {
     pub fn show(&self) -> String {
         match self {
             Self::Text(text) => format!("the text {}", quote(text)),
-            Self::Number(number) => show_number(*number),
+            Self::Number(number) => show_number(number.value),
             Self::List(_) => "a list".to_owned(),
             Self::Table(_) => "a table".to_owned(),
             Self::Truth(truth) => truth.to_string(),

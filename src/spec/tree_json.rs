@@ -5,6 +5,7 @@ use std::fmt;
 use serde::de::{Deserialize, Deserializer, MapAccess, SeqAccess, Visitor};
 
 use super::error::{Place, SpecError};
+use super::transfer::Coefficient;
 use super::tree::{Entry, Node, Value, quote};
 
 /// Parses JSON; `file` is what messages call the file.
@@ -22,7 +23,44 @@ pub(super) fn parse(text: &str, file: &str) -> Result<Node, SpecError> {
         let column = line_bytes.filter(|byte| byte & 0xC0 != 0x80).count().max(1);
         SpecError::Syntax { file: file.to_owned(), notation: "JSON", line, column, message }
     })?;
-    Ok(node(raw, String::new()))
+    Ok(node(raw, String::new(), &mut Literals { rest: text }))
+}
+
+/// The numbers of a JSON text as they are written, in the order of the text: the parser gives
+/// their values alone. The text must be JSON.
+struct Literals<'t> {
+    rest: &'t str,
+}
+
+impl<'t> Iterator for Literals<'t> {
+    type Item = &'t str;
+
+    fn next(&mut self) -> Option<&'t str> {
+        let is_start = |c: char| c == '"' || c == '-' || c.is_ascii_digit();
+        loop {
+            let found = self.rest.get(self.rest.find(is_start)?..)?;
+            if let Some(text) = found.strip_prefix('"') {
+                self.rest = text.get(text_length(text)?..)?;
+                continue;
+            }
+            let is_part = |c: char| c.is_ascii_digit() || matches!(c, '+' | '-' | '.' | 'e' | 'E');
+            let end = found.find(|c| !is_part(c)).unwrap_or(found.len());
+            let (literal, rest) = found.split_at_checked(end)?;
+            self.rest = rest;
+            return Some(literal);
+        }
+    }
+}
+
+/// Bytes of a text from behind its first quotation mark to behind its last one.
+fn text_length(text: &str) -> Option<usize> {
+    let mut is_escaped = false;
+    let end = text.bytes().position(|byte| {
+        let is_end = byte == b'"' && !is_escaped;
+        is_escaped = byte == b'\\' && !is_escaped;
+        is_end
+    })?;
+    Some(end + 1)
 }
 
 /// A JSON value before paths are known. Unlike `serde_json::Value` it keeps a repeated
@@ -36,20 +74,24 @@ enum Raw {
     Other(&'static str),
 }
 
-fn node(raw: Raw, path: String) -> Node {
+/// `literals` stand at the first number of `raw`.
+fn node(raw: Raw, path: String, literals: &mut Literals<'_>) -> Node {
     let value = match raw {
         Raw::Text(text) => Value::Text(text),
-        Raw::Number(number) => Value::Number(number),
+        Raw::Number(number) => Value::Number(match literals.next() {
+            Some(literal) => Coefficient::written(literal, number),
+            None => Coefficient::shortest(number),
+        }),
         Raw::Truth(truth) => Value::Truth(truth),
         Raw::Other(words) => Value::Other(words.to_owned()),
         Raw::List(items) => {
-            let item = |(index, item)| node(item, format!("{path}[{index}]"));
+            let item = |(index, item)| node(item, format!("{path}[{index}]"), literals);
             Value::List(items.into_iter().enumerate().map(item).collect())
         }
         Raw::Object(pairs) => {
             let entry = |(key, value): (String, Raw)| {
                 let key_path = join(&path, &key);
-                Entry { node: node(value, key_path.clone()), key_place: Place::Path(key_path), key }
+                Entry { node: node(value, key_path.clone(), literals), key_place: Place::Path(key_path), key }
             };
             Value::Table(pairs.into_iter().map(entry).collect())
         }

@@ -4,6 +4,7 @@ use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
 use super::error::{Place, SpecError};
+use super::transfer::Coefficient;
 use super::tree::{Entry, Node, Value};
 
 /// Parses TOML; `file` is what messages call the file.
@@ -66,13 +67,15 @@ fn table(from: &DeTable<'_>, places: &Places<'_>) -> Value {
 fn node(from: &Spanned<DeValue<'_>>, places: &Places<'_>) -> Node {
     let value = match from.get_ref() {
         DeValue::String(text) => Value::Text(text.to_string()),
-        DeValue::Integer(integer) => match i128::from_str_radix(integer.as_str(), integer.radix()) {
-            Ok(number) => Value::Number(number as f64),
-            // Too long for any key, which is what the reader then says.
-            Err(_) => Value::Number(f64::INFINITY),
-        },
+        DeValue::Integer(integer) => {
+            let read = i128::from_str_radix(integer.as_str(), integer.radix());
+            // One that is too long is too long for any key, which is what the reader then says.
+            let value = read.map_or(f64::INFINITY, |number| number as f64);
+            Value::Number(Coefficient { value, unit: 0.0 })
+        }
         DeValue::Float(float) => match float.as_str().parse() {
-            Ok(number) => Value::Number(number),
+            // The parser has taken out underscores.
+            Ok(number) => Value::Number(Coefficient::written(float.as_str(), number)),
             Err(_) => Value::Other(float.as_str().to_owned()),
         },
         DeValue::Boolean(truth) => Value::Truth(*truth),

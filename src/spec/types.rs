@@ -1,5 +1,6 @@
 //! The normalized spec: every default filled in, every value in range.
 
+use super::stages::{Family, Line, Row, Stage};
 pub use crate::wave::RateMeaning;
 
 /// What to do with a dataset and what must come out.
@@ -14,10 +15,16 @@ pub struct Spec {
     pub rate: Option<RateMeaning>,
     /// How filtered samples are written.
     pub output: OutputSpec,
+    /// Whether the cascade runs once, or forward and backward.
+    pub phase: Phase,
+    /// There where the cascade is to be found from the bands: then there are no stages, some
+    /// band has `reduce_db` and none `residual_dbfs`.
+    pub auto: Option<Auto>,
     /// Name of one keep or observed band, `name xN` for a line of a row: its gain counts
     /// as 0 dB where pairs are measured that something else filtered.
     pub reference_band: Option<String>,
-    /// The filters, applied in this order.
+    /// The filters, applied in this order. With [`Phase::Zero`] none of them is a weighting or
+    /// a transfer function: half of their decibels is no rational filter.
     pub stages: Vec<Stage>,
     /// Named frequency ranges with their requirements. No two share a name, and none has
     /// the name of a line of another. A reduce band shares no frequency with a keep band
@@ -26,10 +33,10 @@ pub struct Spec {
 }
 
 impl Spec {
-    /// Whether nothing is done to the samples: no stage and no gain.
+    /// Whether nothing is done to the samples: no stage, none to be found, and no gain.
     /// Then there is no dither, whatever [`OutputSpec::dither`] says.
     pub fn is_identity(&self) -> bool {
-        self.stages.is_empty() && self.output.gain_db == 0.0
+        self.stages.is_empty() && self.auto.is_none() && self.output.gain_db == 0.0
     }
 
     /// The largest `reduce_db` of the spec, dB; nothing where no band must be reduced.
@@ -41,6 +48,41 @@ impl Spec {
     pub fn named_bands(&self) -> impl Iterator<Item = NamedBand> + '_ {
         self.bands.iter().flat_map(Band::named)
     }
+}
+
+/// `phase`: how the cascade runs over the samples.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum Phase {
+    /// Once, forward.
+    #[default]
+    Causal,
+    /// Forward and backward: no phase shift, and every limit of the spec means both passes
+    /// together.
+    Zero,
+}
+
+impl Phase {
+    /// How often the cascade runs over the samples.
+    pub fn passes(self) -> u32 {
+        match self {
+            Self::Causal => 1,
+            Self::Zero => 2,
+        }
+    }
+}
+
+/// `design = "auto"` and `[auto]`: what the search for a cascade is held to.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq, serde::Serialize, schemars::JsonSchema)]
+#[schemars(deny_unknown_fields)]
+pub struct Auto {
+    /// The only prototype family of low-pass, high-pass and band-stop stages; any without it.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(with = "Family")]
+    pub family: Option<Family>,
+    /// Most second-order sections of the cascade, 1 to 200.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[schemars(schema_with = "super::schema::max_sections")]
+    pub max_sections: Option<u32>,
 }
 
 /// `beyond_half_rate`: what to do with a stage or band that does not fit.
@@ -109,166 +151,6 @@ pub enum Overload {
     Clip,
     /// The recording is filtered again with the gain that fits.
     Scale,
-}
-
-/// One filter as a user writes it.
-#[derive(Clone, Debug, PartialEq)]
-pub enum Stage {
-    /// A low-pass, high-pass, band-pass, band-stop or a row of either of the last two.
-    Filter(FilterStage),
-    /// One second-order notch a line.
-    Notch(NotchStage),
-}
-
-impl Stage {
-    /// The word for its kind in spec and report.
-    pub fn kind_name(&self) -> &'static str {
-        match self {
-            Self::Filter(filter) => filter.kind.name(),
-            Self::Notch(_) => NotchStage::KIND_NAME,
-        }
-    }
-}
-
-/// A stage designed from an analog prototype.
-#[derive(Clone, Debug, PartialEq)]
-pub struct FilterStage {
-    /// What it lets through.
-    pub kind: FilterKind,
-    /// Its prototype.
-    pub family: Family,
-    /// Order of the low-pass prototype, 1 to [`Family::highest_order`].
-    pub order: u32,
-    /// Where its edges are.
-    pub placement: Placement,
-    /// Pass band ripple, dB, above 0 and at most 12: there for Chebyshev I and elliptic
-    /// alone.
-    pub ripple_db: Option<f64>,
-    /// Stop band attenuation, dB, above 3.0103 (half power) and above the ripple, at most
-    /// 200: there for Chebyshev II and elliptic alone.
-    pub stop_db: Option<f64>,
-}
-
-/// What a [`FilterStage`] lets through.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-#[allow(missing_docs)]
-pub enum FilterKind {
-    Lowpass,
-    Highpass,
-    Bandpass,
-    Bandstop,
-}
-
-/// Prototype family. It decides what an edge is: the half-power point (-3 dB) for
-/// Butterworth and Bessel, the end of the ripple for Chebyshev I and elliptic, the
-/// beginning of the stop band for Chebyshev II.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-#[allow(missing_docs)]
-pub enum Family {
-    Butterworth,
-    Chebyshev1,
-    Chebyshev2,
-    Elliptic,
-    Bessel,
-}
-
-impl Family {
-    /// Highest order of its low-pass prototype: as far as prototypes are held against
-    /// references. Beyond order 14 elliptic filters of usual ripple have transition
-    /// bands below the resolution of what they are used on.
-    pub fn highest_order(self) -> u32 {
-        if self == Self::Elliptic { 14 } else { 20 }
-    }
-
-    /// Whether its pass band has a ripple to choose, `ripple_db`.
-    pub fn takes_ripple(self) -> bool {
-        matches!(self, Self::Chebyshev1 | Self::Elliptic)
-    }
-
-    /// Whether its stop band has an attenuation to choose, `stop_db`.
-    pub fn takes_stop(self) -> bool {
-        matches!(self, Self::Chebyshev2 | Self::Elliptic)
-    }
-}
-
-/// Where a [`FilterStage`]'s edges are.
-#[derive(Clone, Debug, PartialEq)]
-pub enum Placement {
-    /// One edge: low-pass and high-pass.
-    Edge {
-        /// The edge, Hz, above 0.
-        edge_hz: f64,
-    },
-    /// Two edges: band-pass and band-stop.
-    Edges {
-        /// Lower and upper edge, Hz, above 0 and in this order.
-        edges_hz: [f64; 2],
-    },
-    /// A row of lines at `center_hz` times 1, 2, ... `harmonics`; edges lie half a
-    /// width below and above each center.
-    Row(Row),
-}
-
-/// Lines at the multiples of a center. In a spec that was read, every line has
-/// `0 < from_hz < center_hz < to_hz`; the lines of a row of stops or notches share no
-/// frequency, and those of a row of band-passes have one in common.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Row {
-    /// Center of the first line, Hz, above 0.
-    pub center_hz: f64,
-    /// Extent of the lines, edge to edge.
-    pub width: Width,
-    /// Number of lines, from 1 to 500.
-    pub harmonics: u32,
-}
-
-/// Extent of the lines of a row.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub enum Width {
-    /// The same number of Hz for every line: less than twice the center.
-    Hz(f64),
-    /// The same Q (center over width) for every line: above 0.5.
-    Q(f64),
-}
-
-/// One line of a row, or a single range.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct Line {
-    /// 1 for the fundamental.
-    pub harmonic: u32,
-    /// Center, Hz.
-    pub center_hz: f64,
-    /// Lower edge, Hz.
-    pub from_hz: f64,
-    /// Upper edge, Hz.
-    pub to_hz: f64,
-}
-
-impl Row {
-    /// The lines, lowest first.
-    pub fn lines(&self) -> impl Iterator<Item = Line> + use<> {
-        let row = *self;
-        (1..=row.harmonics).map(move |harmonic| {
-            let center_hz = row.center_hz * f64::from(harmonic);
-            let width_hz = match row.width {
-                Width::Hz(hz) => hz,
-                Width::Q(q) => center_hz / q,
-            };
-            Line { harmonic, center_hz, from_hz: center_hz - width_hz / 2.0, to_hz: center_hz + width_hz / 2.0 }
-        })
-    }
-}
-
-/// A row of notches: `width` is the -3 dB width of the digital filter.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct NotchStage {
-    /// Where the notches are and how wide.
-    pub row: Row,
-}
-
-impl NotchStage {
-    /// The word for this kind of stage in spec and report.
-    pub const KIND_NAME: &str = "notch";
 }
 
 /// A range of frequencies under a name, with a requirement or without, or a row of them.

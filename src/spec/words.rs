@@ -5,7 +5,8 @@ use serde::{Serialize, Serializer};
 use std::borrow::Cow;
 
 use super::schema;
-use super::types::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload, RateMeaning};
+use super::stages::{Curve, EqualizerKind, Family, FilterKind};
+use super::types::{BeyondHalfRate, Dither, OutputEncoding, Overload, Phase, RateMeaning};
 
 /// A choice among words.
 pub(super) trait Word: Copy + 'static {
@@ -92,7 +93,7 @@ words!(Overload {
     Scale => "scale" | "normalize" | "attenuate",
 });
 
-// A file's `kind` may be a notch too: other words for it stand with its reader.
+// Other words for the kinds of stages stand in `kind`.
 words!(FilterKind {
     Lowpass => "lowpass",
     Highpass => "highpass",
@@ -106,4 +107,33 @@ words!(Family {
     Chebyshev2 => "chebyshev2" | "cheby2" | "cheb2" | "chebyshevii" | "chebyshevtype2" | "type2" | "inversechebyshev",
     Elliptic => "elliptic" | "ellip" | "cauer" | "zolotarev",
     Bessel => "bessel" | "thomson" | "maximallyflatdelay",
+});
+
+words!(Phase {
+    Causal => "causal" | "forward" | "once" | "minimum" | "nonlinear",
+    Zero => "zero" | "zerophase" | "forwardbackward" | "bidirectional" | "filtfilt" | "noncausal",
+});
+
+/// `design`: how the cascade comes about where no stage says it.
+#[derive(Clone, Copy)]
+pub(super) enum DesignWay {
+    /// It is found from the bands.
+    Auto,
+}
+
+words!(DesignWay {
+    Auto => "auto" | "automatic" | "automatically" | "find" | "frombands" | "bands" | "true" | "on" | "yes",
+});
+
+words!(EqualizerKind {
+    Peak => "peak",
+    Lowshelf => "lowshelf",
+    Highshelf => "highshelf",
+});
+
+words!(Curve {
+    A => "A" | "aweighting" | "dba",
+    C => "C" | "cweighting" | "dbc",
+    K => "K" | "kweighting" | "lufs" | "bs1770",
+    Riaa => "riaa" | "record" | "phono",
 });

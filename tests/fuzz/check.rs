@@ -211,7 +211,8 @@ fn check_within(bounded: Bounded<'_>, file: &[u8], is_legal: bool, random: &mut 
     // With or without another format, with or without a line of history.
     let format = if random.one_in(4) { header.format } else { SampleFormat::full(encoding) };
     let encoding = format.encoding;
-    let history = random.one_in(2).then(|| History { tool: HISTORY.to_owned(), spec_sha256: "ab".repeat(32) });
+    let history =
+        random.one_in(2).then(|| History { tool: HISTORY.to_owned(), both_ways: false, spec_sha256: "ab".repeat(32) });
     let riff_limit_bytes = if random.one_in(4) { random.below(1000) as u64 } else { RIFF_LIMIT_BYTES };
     let other = Changes { format, riff_limit_bytes, history };
     match copy(&mut reader, file, &other, block, |value| exact(encoding, value)) {

@@ -5,7 +5,8 @@
 
 use std::sync::LazyLock;
 
-use bandproof::spec::{self, SpecError, SpecSyntax};
+use bandproof::spec::document::Comments;
+use bandproof::spec::{self, Spec, SpecError, SpecSyntax};
 use serde_json::{Map, Value, json};
 
 use crate::random::Random;
@@ -14,9 +15,10 @@ use crate::runner::{self, Plan};
 /// Cases in an ordinary run of the tests: a tenth of those of the container.
 const CASES: u64 = 1_000_000;
 
-/// A spec with every key there is.
+/// A spec with every key there is but those of `AUTO`.
 const ALL_KEYS: &str = r#"{
 "title": "All keys", "beyond_half_rate": "leave-out", "rate": "acoustic", "reference_band": "calls",
+"phase": "causal",
 "output": {"encoding": "pcm24", "dither": "none", "overload": "scale", "gain_db": -3.5, "history": true},
 "stage": [
   {"kind": "highpass", "family": "bessel", "order": 3, "edge_hz": 40},
@@ -24,7 +26,17 @@ const ALL_KEYS: &str = r#"{
   {"kind": "bandstop", "family": "elliptic", "order": 3, "center_hz": 50, "width_hz": 3.2, "harmonics": 8,
    "ripple_db": 0.1, "stop_db": 40},
   {"kind": "bandpass", "family": "chebyshev2", "order": 2, "edges_hz": [100, 5000], "stop_db": 60},
-  {"kind": "notch", "center_hz": 15800, "q": 60}
+  {"kind": "notch", "center_hz": 15800, "q": 60},
+  {"kind": "lowpass", "family": "bessel", "edge_hz": 900, "stop_edge_hz": 2000, "ripple_db": 1, "stop_db": 40},
+  {"kind": "bandstop", "family": "elliptic", "edges_hz": [40, 60], "stop_edges_hz": [48, 52],
+   "ripple_db": 1, "stop_db": 40},
+  {"kind": "peak", "center_hz": 1200, "gain_db": -6, "q": 1.5},
+  {"kind": "highshelf", "edge_hz": 8000, "gain_db": 3.5, "slope": 0.75},
+  {"kind": "weighting", "curve": "riaa"},
+  {"kind": "digital", "numerator": [0.0675, 0.1350, 0.0675], "denominator": [1, -1.1430, 0.4128]},
+  {"kind": "digital", "sections": [{"b": [1, 2, 1], "a": [1, -1.0106, 0.3583]}]},
+  {"kind": "digital", "zeros": [-1, [0.25, 0.75], [0.25, -0.75]], "poles": [[0.5, 0.25], [0.5, -0.25], 0], "gain": 0.125},
+  {"kind": "analog", "zeros_hz": [0, 0], "poles_hz": [-20.6, -20.6], "gain": 1, "match_hz": 1000}
 ],
 "band": [
   {"name": "hum", "center_hz": 50, "span_hz": 1, "harmonics": 8, "reduce_db": 30},
@@ -33,12 +45,25 @@ const ALL_KEYS: &str = r#"{
   {"name": "rest", "from_hz": 7000, "to_hz": 8000}
 ]}"#;
 
+/// A spec whose cascade is to be found.
+const AUTO: &str = r#"{
+"phase": "zero", "design": "auto", "auto": {"family": "elliptic", "max_sections": 12},
+"band": [
+  {"name": "hum", "center_hz": 50, "span_hz": 1, "harmonics": 2, "reduce_db": 30},
+  {"name": "calls", "from_hz": 200, "to_hz": 6000, "keep_db": 0.5}
+]}"#;
+
 /// Texts to begin with.
 static TEXTS: LazyLock<Vec<(String, SpecSyntax)>> = LazyLock::new(|| {
     let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("filter-specs");
     let mut paths: Vec<_> = std::fs::read_dir(folder).unwrap().map(|entry| entry.unwrap().path()).collect();
     paths.sort();
-    let mut texts = vec![(ALL_KEYS.to_owned(), SpecSyntax::Json), (toml_of(&document(ALL_KEYS)), SpecSyntax::Toml)];
+    let mut texts = Vec::new();
+    for json in [ALL_KEYS, AUTO] {
+        spec::parse(json.as_bytes(), SpecSyntax::Json, "spec").unwrap_or_else(|error| panic!("{error}"));
+        texts.push((json.to_owned(), SpecSyntax::Json));
+        texts.push((toml_of(&document(json)), SpecSyntax::Toml));
+    }
     for path in paths {
         let syntax = SpecSyntax::of_path(&path).unwrap();
         let text = std::fs::read_to_string(&path).unwrap();
@@ -46,7 +71,7 @@ static TEXTS: LazyLock<Vec<(String, SpecSyntax)>> = LazyLock::new(|| {
         let spec = spec::parse(text.as_bytes(), syntax, "spec").unwrap_or_else(|error| panic!("{error}"));
         match syntax {
             SpecSyntax::Toml => texts.push((serde_json::to_string(&spec).unwrap(), SpecSyntax::Json)),
-            SpecSyntax::Json => texts.push((toml::to_string(&spec).unwrap(), SpecSyntax::Toml)),
+            SpecSyntax::Json => texts.push((toml_text(&spec), SpecSyntax::Toml)),
         }
         texts.push((text, syntax));
     }
@@ -59,6 +84,10 @@ static TREES: LazyLock<Vec<Value>> = LazyLock::new(|| {
 
 fn document(text: &str) -> Value {
     serde_json::from_str(text).unwrap()
+}
+
+fn toml_text(spec: &Spec) -> String {
+    spec::document::document(spec, SpecSyntax::Toml, &Comments::default()).unwrap()
 }
 
 fn toml_of(tree: &Value) -> String {
@@ -162,7 +191,7 @@ fn graft(tree: &mut Value, random: &mut Random) {
 }
 
 /// Pieces of either notation.
-const PIECES: [&str; 30] = [
+const PIECES: [&str; 34] = [
     "[[band]]\n",
     "[[stage]]\n",
     "[output]\n",
@@ -193,6 +222,10 @@ const PIECES: [&str; 30] = [
     "\"",
     "rate = \"header\"\n",
     "history = true\n",
+    "design = \"auto\"\n",
+    "phase = \"zero\"\n",
+    "[0.5, -0.70]",
+    "1.50E-02",
 ];
 
 /// Does something to the bytes of a text.
@@ -248,11 +281,12 @@ fn case(seed: u64, number: u64) -> usize {
         Ok(spec) => {
             // What is read is written so that it is read again, in both notations.
             let json = serde_json::to_vec(&spec).unwrap();
-            assert_eq!(spec::parse(&json, SpecSyntax::Json, "json").unwrap_or_else(|error| panic!("{error}")), spec);
-            let toml = toml::to_string(&spec).unwrap();
+            let again = spec::parse(&json, SpecSyntax::Json, "json").unwrap_or_else(|error| panic!("{error}"));
+            assert_eq!(again, spec);
+            let toml = toml_text(&spec);
             assert_eq!(
                 spec::parse(toml.as_bytes(), SpecSyntax::Toml, "toml").unwrap_or_else(|error| panic!("{error}")),
-                spec
+                again
             );
             2
         }

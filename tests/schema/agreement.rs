@@ -24,18 +24,24 @@ const RELATIONS: &[&str] = &[
     "into the keep band",
     "inside the keep band",
     "reference_band names",
+    "is not above edge_hz",
+    "is not below edge_hz",
+    "of stop_edges_hz",
+    "has no conjugate",
+    "has degree",
+    "more zeros than poles",
 ];
 
 /// What reader and schema say of one document.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Debug)]
-enum Outcome {
+pub enum Outcome {
     BothAccept,
     BothReject,
     OnlyTheReaderRejects,
 }
 
 /// Panics where they contradict each other; counts relations that were hurt.
-fn judge(document: &Value, hurt: &mut BTreeMap<&'static str, usize>) -> Outcome {
+pub fn judge(document: &Value, hurt: &mut BTreeMap<&'static str, usize>) -> Outcome {
     match (read(document), SPEC.is_valid(document)) {
         (Ok(spec), true) => {
             // What it is normalized to is a spec for both as well.
@@ -107,6 +113,29 @@ fn specs_of_every_kind_are_accepted_by_both() {
         "residual_dbfs",
         "except",
         "from_hz",
+        "stop_edge_hz",
+        "stop_edges_hz",
+        "peak",
+        "lowshelf",
+        "highshelf",
+        "slope",
+        "weighting",
+        "riaa",
+        "digital",
+        "numerator",
+        "denominator",
+        "sections",
+        "zeros\"",
+        "poles\"",
+        "analog",
+        "zeros_hz",
+        "poles_hz",
+        "match_hz",
+        "rate_hz",
+        "phase",
+        "design",
+        "auto\":{",
+        "max_sections",
     ] {
         assert!(words.contains(word), "{word}");
     }
@@ -142,6 +171,11 @@ fn each_relation_is_out_of_reach_of_the_schema() {
     };
     let band = |band: Value| json!({"band": [band]});
     let stage = |stage: Value| json!({"stage": [stage]});
+    let limits = |place: Value| {
+        let mut keys = json!({"family": "bessel", "ripple_db": 1, "stop_db": 40});
+        keys.as_object_mut().unwrap().extend(place.as_object().unwrap().clone());
+        stage(keys)
+    };
     let (keep, reduce) = (limited(range("keep", 1.0, 9.0), "keep_db", json!(1)), |from, to| {
         limited(range("reduce", from, to), "reduce_db", json!(20))
     });
@@ -169,6 +203,13 @@ fn each_relation_is_out_of_reach_of_the_schema() {
         ("inside the keep band", json!({"band": [keep.clone(), reduce(2.0, 3.0)]})),
         ("into the keep band", json!({"band": [keep.clone(), reduce(2.0, 30.0)]})),
         ("reference_band names", limited(band(range("a", 1.0, 2.0)), "reference_band", json!("b"))),
+        ("is not above edge_hz", limits(json!({"kind": "lowpass", "edge_hz": 60, "stop_edge_hz": 60}))),
+        ("is not below edge_hz", limits(json!({"kind": "highpass", "edge_hz": 60, "stop_edge_hz": 70}))),
+        ("of stop_edges_hz", limits(json!({"kind": "bandpass", "edges_hz": [40, 60], "stop_edges_hz": [45, 70]}))),
+        ("has no conjugate", stage(json!({"kind": "digital", "poles": [[0.5, 0.5], [0.5, 0.5]], "gain": 1}))),
+        ("has degree", stage(json!({"kind": "analog", "numerator": [1, 0, 0], "denominator": [1, 1]}))),
+        ("more zeros than poles", stage(json!({"kind": "digital", "zeros": [0.5], "poles": [], "gain": 1}))),
+        ("more zeros than poles", stage(json!({"kind": "analog", "zeros": [0, 0], "poles": [-1], "gain": 1}))),
     ];
     for (relation, document) in &documents {
         let mut hurt = BTreeMap::new();
@@ -178,102 +219,5 @@ fn each_relation_is_out_of_reach_of_the_schema() {
     let listed: Vec<_> = documents.iter().map(|(relation, _)| *relation).collect();
     for relation in RELATIONS {
         assert!(listed.contains(relation), "{relation}");
-    }
-}
-
-/// What a schema can say, rule by rule, so that a rule that is lost is named.
-#[test]
-fn each_rule_of_the_keys_is_said_by_both() {
-    let filter = |keys: Value| {
-        let mut stage = json!({"kind": "bandstop", "family": "butterworth", "order": 2, "edges_hz": [40, 60]});
-        for (key, value) in keys.as_object().unwrap() {
-            if value.is_null() {
-                stage.as_object_mut().unwrap().shift_remove(key);
-            } else {
-                stage[key] = value.clone();
-            }
-        }
-        json!({"stage": [stage]})
-    };
-    let notch = |keys: Value| {
-        let mut stage = json!({"kind": "notch", "center_hz": 50});
-        stage.as_object_mut().unwrap().extend(keys.as_object().unwrap().clone());
-        json!({"stage": [stage]})
-    };
-    let band = |keys: Value| {
-        let mut band = json!({"name": "a"});
-        band.as_object_mut().unwrap().extend(keys.as_object().unwrap().clone());
-        json!({"band": [band]})
-    };
-    let wrong = [
-        json!({}),
-        json!({"title": "a"}),
-        json!({"stage": [], "band": []}),
-        json!([]),
-        filter(json!({"kind": null})),
-        filter(json!({"kind": "comb"})),
-        filter(json!({"family": null})),
-        filter(json!({"order": null})),
-        filter(json!({"order": 2.5})),
-        filter(json!({"order": 21})),
-        filter(json!({"family": "elliptic", "ripple_db": 1, "stop_db": 40, "order": 15})),
-        filter(json!({"ripple_db": 1})),
-        filter(json!({"stop_db": 40})),
-        filter(json!({"family": "chebyshev1"})),
-        filter(json!({"family": "chebyshev1", "ripple_db": 1, "stop_db": 40})),
-        filter(json!({"family": "chebyshev2"})),
-        filter(json!({"family": "chebyshev2", "ripple_db": 1, "stop_db": 40})),
-        filter(json!({"family": "elliptic", "ripple_db": 1})),
-        filter(json!({"family": "elliptic", "stop_db": 40})),
-        filter(json!({"edges_hz": null})),
-        filter(json!({"edges_hz": [40]})),
-        filter(json!({"edges_hz": [40, 50, 60]})),
-        filter(json!({"edge_hz": 40})),
-        filter(json!({"center_hz": 50})),
-        filter(json!({"harmonics": 2})),
-        filter(json!({"edges_hz": null, "center_hz": 50})),
-        filter(json!({"edges_hz": null, "width_hz": 2})),
-        filter(json!({"edges_hz": null, "center_hz": 50, "width_hz": 2, "q": 25})),
-        filter(json!({"edges_hz": null, "center_hz": 50, "span_hz": 2})),
-        filter(json!({"kind": "lowpass"})),
-        filter(json!({"kind": "lowpass", "edge_hz": 40})),
-        filter(json!({"kind": "highpass", "edges_hz": null, "edge_hz": 40, "q": 2})),
-        notch(json!({})),
-        notch(json!({"q": 0.5})),
-        notch(json!({"q": 30, "width_hz": 2})),
-        notch(json!({"q": 30, "family": "bessel"})),
-        notch(json!({"q": 30, "order": 2})),
-        notch(json!({"q": 30, "harmonics": 501})),
-        notch(json!({"q": 30, "harmonics": 0})),
-        band(json!({})),
-        band(json!({"from_hz": 1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "center_hz": 1.5})),
-        band(json!({"from_hz": 1, "to_hz": 2, "harmonics": 1})),
-        band(json!({"center_hz": 5})),
-        band(json!({"center_hz": 5, "span_hz": 1, "q": 5})),
-        band(json!({"center_hz": 5, "width_hz": 1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "reduce_db": 1, "keep_db": 1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "reduce_db": 1, "residual_dbfs": -1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "keep_db": 1, "residual_dbfs": -1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "residual_dbfs": 1})),
-        band(json!({"from_hz": 1, "to_hz": 2, "except": []})),
-        band(json!({"from_hz": 1, "to_hz": 2, "reduce_db": 1, "except": []})),
-        band(json!({"from_hz": 1, "to_hz": 2, "keep_db": 1, "except": "b"})),
-    ];
-    for document in &wrong {
-        assert_eq!(judge(document, &mut BTreeMap::new()), Outcome::BothReject, "{document}");
-    }
-    let right = [
-        filter(json!({})),
-        filter(json!({"order": 20})),
-        filter(json!({"edges_hz": null, "center_hz": 50, "q": 25})),
-        filter(json!({"edges_hz": null, "center_hz": 50, "width_hz": 2, "harmonics": 3})),
-        filter(json!({"kind": "lowpass", "edges_hz": null, "edge_hz": 40})),
-        notch(json!({"q": 30, "harmonics": 30})),
-        band(json!({"center_hz": 5, "q": 5})),
-        band(json!({"from_hz": 0, "to_hz": 2, "keep_db": 1, "except": []})),
-    ];
-    for document in &right {
-        assert_eq!(judge(document, &mut BTreeMap::new()), Outcome::BothAccept, "{document}");
     }
 }

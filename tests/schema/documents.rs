@@ -67,7 +67,7 @@ fn the_report_requires_every_key() {
     let schema = bandproof::report::schema();
     let mut tables = 0;
     walk(&schema, "", &mut |pointer, object| {
-        let is_spec = ["/$defs/Stage", "/$defs/Band", "/$defs/Spec"].contains(&pointer);
+        let is_spec = ["/$defs/Auto", "/$defs/Stage", "/$defs/Band", "/$defs/Spec"].contains(&pointer);
         if object.get("type").is_some_and(|of| of == "object") && !is_spec {
             tables += 1;
             let keys: Vec<_> = object["properties"].as_object().unwrap().keys().collect();
@@ -84,6 +84,7 @@ fn the_spec_requires_only_what_has_no_default() {
     let schema = bandproof::spec::schema();
     assert_eq!(schema.get("required"), None);
     assert_eq!(schema["$defs"]["Output"].get("required"), None);
+    assert_eq!(schema["$defs"]["Auto"].get("required"), None);
     assert_eq!(schema["$defs"]["Stage"]["required"], serde_json::json!(["kind"]));
     assert_eq!(schema["$defs"]["Band"]["required"], serde_json::json!(["name"]));
     // The defaults it states are those the reader fills in.
@@ -91,6 +92,7 @@ fn the_spec_requires_only_what_has_no_default() {
         crate::read(&serde_json::json!({"band": [{"name": "a", "center_hz": 9, "q": 3, "keep_db": 1}]})).unwrap();
     let normalized = serde_json::to_value(read).unwrap();
     assert_eq!(schema["properties"]["beyond_half_rate"]["default"], normalized["beyond_half_rate"]);
+    assert_eq!(schema["properties"]["phase"]["default"], normalized["phase"]);
     assert_eq!(schema["properties"]["output"]["default"], normalized["output"]);
     for (key, value) in normalized["output"].as_object().unwrap() {
         assert_eq!(&schema["$defs"]["Output"]["properties"][key]["default"], value, "{key}");
@@ -149,10 +151,10 @@ fn every_number_with_a_unit_in_its_name_says_it_in_words() {
 fn the_spec_inside_the_report_is_the_spec_with_every_default_filled_in() {
     let (spec, report) = (bandproof::spec::schema(), bandproof::report::schema());
     assert_eq!(report["$defs"]["SpecEntry"]["properties"]["normalized"]["$ref"], "#/$defs/Spec");
-    for table in ["Stage", "Band"] {
+    for table in ["Auto", "Stage", "Band"] {
         assert_eq!(spec["$defs"][table], report["$defs"][table], "{table}");
     }
     let inside = &report["$defs"]["Spec"];
     assert_eq!(inside["properties"], spec["properties"]);
-    assert_eq!(inside["required"], serde_json::json!(["beyond_half_rate", "output", "stage", "band"]));
+    assert_eq!(inside["required"], serde_json::json!(["beyond_half_rate", "phase", "output", "stage", "band"]));
 }

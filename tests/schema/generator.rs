@@ -1,38 +1,39 @@
 //! Spec files as people write them, of every kind, and ways to damage them.
 
-use bandproof::spec::{BeyondHalfRate, Dither, Family, FilterKind, OutputEncoding, Overload, RateMeaning};
+use crate::generator_stage::{stage, whole_stage};
+use bandproof::spec::{BeyondHalfRate, Dither, Family, OutputEncoding, Overload, Phase, RateMeaning};
 use proptest::prelude::*;
 use proptest::sample::{Index, select};
 use serde_json::{Map, Value, json};
 
 /// Adds keys of `more` to `table`.
-fn and(mut table: Value, more: Value) -> Value {
+pub fn and(mut table: Value, more: Value) -> Value {
     let (Value::Object(table_keys), Value::Object(more)) = (&mut table, more) else { panic!("no tables") };
     table_keys.extend(more);
     table
 }
 
 /// Each key of a table is there or not.
-fn some_of(table: Map<String, Value>) -> impl Strategy<Value = Value> {
+pub fn some_of(table: Map<String, Value>) -> impl Strategy<Value = Value> {
     let keys: Vec<_> = table.into_iter().collect();
     let size = keys.len();
     proptest::sample::subsequence(keys, 0..=size).prop_map(|keys| Value::Object(keys.into_iter().collect()))
 }
 
 /// Whole and broken numbers, as both can be written.
-fn number(from: f64, to: f64) -> impl Strategy<Value = Value> {
+pub fn number(from: f64, to: f64) -> impl Strategy<Value = Value> {
     prop_oneof![
         (from..to).prop_map(|number| json!(number)),
         (from.ceil() as i64..=to.floor() as i64).prop_map(|number| json!(number)),
     ]
 }
 
-fn frequency() -> impl Strategy<Value = Value> {
+pub fn frequency() -> impl Strategy<Value = Value> {
     number(1.0, 20_000.0)
 }
 
 /// `center_hz` with `width_key` or `q`, narrow enough for as many lines.
-fn row(width_key: &'static str, most: u32) -> impl Strategy<Value = Value> {
+pub fn row(width_key: &'static str, most: u32) -> impl Strategy<Value = Value> {
     let harmonics = prop_oneof![Just(None), (1..=most).prop_map(Some)];
     (1.0..5000.0_f64, harmonics, 0.001..0.9_f64, any::<bool>()).prop_map(move |(center_hz, harmonics, share, by_q)| {
         let mut row = match by_q {
@@ -44,37 +45,6 @@ fn row(width_key: &'static str, most: u32) -> impl Strategy<Value = Value> {
         }
         row
     })
-}
-
-fn edges() -> impl Strategy<Value = Value> {
-    (1.0..9000.0_f64, 1.001..3.0_f64).prop_map(|(low, times)| json!({"edges_hz": [low, low * times]}))
-}
-
-fn stage() -> impl Strategy<Value = Value> {
-    let family = select(Family::ALL).prop_flat_map(|family| {
-        let order = 1..=family.highest_order();
-        (order, 0.01..12.0_f64, 12.1..200.0_f64).prop_map(move |(order, ripple_db, stop_db)| {
-            let mut keys = json!({"family": family.name(), "order": order});
-            if family.takes_ripple() {
-                keys["ripple_db"] = json!(ripple_db);
-            }
-            if family.takes_stop() {
-                keys["stop_db"] = json!(stop_db);
-            }
-            keys
-        })
-    });
-    let place = select(FilterKind::ALL).prop_flat_map(|kind| {
-        let place = match kind {
-            FilterKind::Lowpass | FilterKind::Highpass => frequency().prop_map(|hz| json!({"edge_hz": hz})).boxed(),
-            FilterKind::Bandpass => prop_oneof![edges(), row("width_hz", 1)].boxed(),
-            FilterKind::Bandstop => prop_oneof![edges(), row("width_hz", 20)].boxed(),
-        };
-        place.prop_map(move |place| and(json!({"kind": kind.name()}), place))
-    });
-    let filter = (place, family).prop_map(|(place, family)| and(place, family));
-    let notch = row("width_hz", 20).prop_map(|row| and(json!({"kind": "notch"}), row));
-    prop_oneof![3 => filter, 1 => notch]
 }
 
 /// Bands that agree with each other: names have numbers, and what must be kept excepts all
@@ -104,6 +74,35 @@ fn bands() -> impl Strategy<Value = Vec<Value>> {
     })
 }
 
+/// Keys of the top that say how the cascade comes about, with stages where it is not found.
+fn cascade() -> impl Strategy<Value = Value> {
+    let phase = prop_oneof![Just(json!({})), select(Phase::ALL).prop_map(|phase| json!({"phase": phase.name()}))];
+    let limits = (select(Family::ALL), 1..=200_u32)
+        .prop_map(|(family, most)| json!({"family": family.name(), "max_sections": most}))
+        .prop_flat_map(|limits| some_of(limits.as_object().unwrap().clone()));
+    let ways = limits.prop_map(|limits| json!({"design": "auto", "auto": limits, "stage": []}));
+    let auto = (phase, ways.prop_flat_map(|ways| some_of(ways.as_object().unwrap().clone())))
+        .prop_map(|(phase, ways)| and(phase, ways));
+    let with = |phase: Option<Phase>, stages: Vec<Value>| {
+        let mut keys = json!({});
+        if let Some(phase) = phase {
+            keys["phase"] = json!(phase.name());
+        }
+        if !stages.is_empty() {
+            keys["stage"] = stages.into();
+        }
+        keys
+    };
+    let any = prop_oneof![2 => stage().boxed(), 1 => whole_stage().boxed()];
+    let causal = (select(&[None, Some(Phase::Causal)][..]), proptest::collection::vec(any, 0..4));
+    let zero = proptest::collection::vec(stage(), 0..4);
+    prop_oneof![
+        3 => causal.prop_map(move |(phase, stages)| with(phase, stages)),
+        1 => zero.prop_map(move |stages| with(Some(Phase::Zero), stages)),
+        1 => auto,
+    ]
+}
+
 /// A valid spec, any key left out that may be.
 pub fn document() -> impl Strategy<Value = Value> {
     let output = (
@@ -125,9 +124,16 @@ pub fn document() -> impl Strategy<Value = Value> {
         let all = json!({"title": title, "beyond_half_rate": beyond.name(), "rate": rate.name(), "output": output});
         some_of(all.as_object().unwrap().clone())
     });
-    let stages = proptest::collection::vec(stage(), 0..4);
-    (top, stages, bands(), any::<Option<Index>>())
-        .prop_map(|(mut top, stages, bands, reference)| {
+    (top, cascade(), bands(), any::<Option<Index>>())
+        .prop_map(|(top, cascade, bands, reference)| {
+            let mut top = and(top, cascade);
+            let has = |key: &str| bands.iter().any(|band| band.get(key).is_some());
+            if !has("reduce_db") || has("residual_dbfs") {
+                // Nothing can be found from these bands.
+                for key in ["design", "auto"] {
+                    top.as_object_mut().unwrap().shift_remove(key);
+                }
+            }
             let gains = |band: &&Value| {
                 let single = band.get("harmonics").is_none_or(|lines| lines == 1);
                 single && band.get("reduce_db").is_none() && band.get("residual_dbfs").is_none()
@@ -136,14 +142,15 @@ pub fn document() -> impl Strategy<Value = Value> {
             if let (Some(index), false) = (reference, gains.is_empty()) {
                 top["reference_band"] = index.get(&gains).clone();
             }
-            for (key, entries) in [("stage", stages), ("band", bands)] {
-                if !entries.is_empty() {
-                    top[key] = entries.into();
-                }
+            if !bands.is_empty() {
+                top["band"] = bands.into();
             }
             top
         })
-        .prop_filter("an empty spec is none", |spec| spec.get("stage").is_some() || spec.get("band").is_some())
+        .prop_filter("an empty spec is none", |spec| {
+            let has = |key: &str| spec.get(key).is_some_and(|entries| entries != &json!([]));
+            has("stage") || has("band")
+        })
 }
 
 /// What is done to a document.
@@ -184,6 +191,27 @@ const KEYS: &[&str] = &[
     "harmonics",
     "ripple_db",
     "stop_db",
+    "phase",
+    "design",
+    "auto",
+    "max_sections",
+    "stop_edge_hz",
+    "stop_edges_hz",
+    "gain_db",
+    "slope",
+    "curve",
+    "numerator",
+    "denominator",
+    "sections",
+    "zeros",
+    "poles",
+    "zeros_hz",
+    "poles_hz",
+    "gain",
+    "match_hz",
+    "rate_hz",
+    "b",
+    "a",
     "name",
     "from_hz",
     "to_hz",
@@ -252,6 +280,16 @@ fn value() -> impl Strategy<Value = Value> {
         json!("chebyshev2"),
         json!("elliptic"),
         json!("Bessel"),
+        json!("auto"),
+        json!("zero"),
+        json!("causal"),
+        json!("peak"),
+        json!("lowshelf"),
+        json!("weighting"),
+        json!("digital"),
+        json!("analog"),
+        json!("K"),
+        json!("riaa"),
     ];
     let others = vec![
         json!(null),
@@ -270,6 +308,16 @@ fn value() -> impl Strategy<Value = Value> {
         json!([{"name": "a", "from_hz": 1, "to_hz": 2}]),
         json!([{"kind": "notch", "center_hz": 50, "q": 9}]),
         json!([{}]),
+        json!([0, 1, 2]),
+        json!([1, 0, 0]),
+        json!([0, 0, 0]),
+        json!([0.5]),
+        json!([[0.5, 0.7], [0.5, -0.7]]),
+        json!([[0.5, 0.7]]),
+        json!([[1, 2, 3]]),
+        json!([{"b": [1, 2, 1], "a": [1, 0, 0.5]}]),
+        json!([{"b": [1, 2, 1], "a": [1, 0]}]),
+        json!({"max_sections": 3}),
     ];
     prop_oneof![2 => select(numbers), 1 => select(texts), 1 => select(others)]
 }

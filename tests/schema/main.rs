@@ -9,8 +9,10 @@ mod command;
 mod documents;
 mod files;
 mod generator;
+mod generator_stage;
 mod mutations;
 mod reports;
+mod rules;
 mod samples;
 
 use bandproof::spec::{self, SpecSyntax};

@@ -110,11 +110,13 @@ pub(crate) const REED_BED_JSON: &str = r#"{
 
 fn reed_bed() -> Spec {
     let filter = |kind, family, order, placement, ripple_db, stop_db| {
-        Stage::Filter(FilterStage { kind, family, order, placement, ripple_db, stop_db })
+        Stage::Filter(FilterStage { kind, family, order: Order::Given(order), placement, ripple_db, stop_db })
     };
     let row = |center_hz, width, harmonics| Row { center_hz, width, harmonics };
     let band = |name: &str, extent, requirement| Band { name: name.to_owned(), extent, requirement };
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         reference_band: Some("bird calls".to_owned()),
         rate: Some(RateMeaning::Acoustic),
         title: Some("Reed bed beside the pumping station".to_owned()),

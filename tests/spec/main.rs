@@ -3,18 +3,29 @@
 // Clippy lets test functions panic, but not the functions they call.
 #![allow(clippy::unwrap_used, clippy::panic)]
 
+mod auto;
 mod contradictions;
+mod designs;
+mod digits;
+mod equalizers;
 mod examples;
 mod files;
+mod limits;
 mod mutations;
 mod normalized;
 mod places;
 mod reference;
 mod round_trip;
 mod suggestions;
+mod transfers;
 mod values;
 
-use bandproof::spec::{self, Spec, SpecSyntax};
+use bandproof::spec::{self, DigitalFilter, DigitalStage, Spec, SpecSyntax, Stage};
+
+/// A stage in z that names no sample rate.
+fn any_rate(filter: DigitalFilter) -> Stage {
+    Stage::Digital(DigitalStage { filter, rate_hz: None })
+}
 
 /// Reads TOML that must be a valid spec.
 fn read(text: &str) -> Spec {

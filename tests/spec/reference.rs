@@ -30,7 +30,7 @@ fn it_stands_in_the_normalized_spec_before_the_tables() {
     let json = serde_json::to_value(&spec).unwrap();
     assert_eq!(json["reference_band"], "calls");
     let keys: Vec<_> = json.as_object().unwrap().keys().cloned().collect();
-    assert_eq!(keys, ["beyond_half_rate", "reference_band", "output", "stage", "band"]);
+    assert_eq!(keys, ["beyond_half_rate", "reference_band", "phase", "output", "stage", "band"]);
     assert_eq!(spec::parse(json.to_string().as_bytes(), SpecSyntax::Json, "spec.json").unwrap(), spec);
     assert!(!serde_json::to_string(&read(BANDS)).unwrap().contains("reference_band"));
 }

@@ -37,7 +37,8 @@ fn keys_of_a_stage_with_one_edge() {
             ("stop_db", &["stop", "rs", "attenuation", "atten", "depth", "stopdb"]),
             ("order", &["n", "ordr", "Order", "filter_order"]),
             ("kind", &["type", "filter_type", "knd"]),
-            ("family", &["prototype", "familly"]),
+            ("family", &["prototype", "familly", "design"]),
+            ("stop_edge_hz", &["stop_edge", "stopband", "stop_freq", "ws", "stop_edge_khz", "stop_egde_hz"]),
         ],
     );
 }
@@ -59,7 +60,45 @@ fn keys_of_stages_with_lines() {
             ("edges_hz", &["edges", "cutoff", "edge", "from_hz", "low", "edge_khz"]),
             ("center_hz", &["freq"]),
             ("stop_db", &["depth", "reduce_db"]),
+            ("stop_edges_hz", &["stop_edges", "stopband", "stopband_hz", "stop_edge"]),
         ],
+    );
+}
+
+#[test]
+fn keys_of_peaks_shelves_and_curves() {
+    check(
+        "[[stage]]\nkind = 'peak'\n",
+        &[
+            ("center_hz", &["freq", "f0", "center"]),
+            ("gain_db", &["boost", "gian_db", "Gain_dB", "volume"]),
+            ("q", &["Q", "quality"]),
+        ],
+    );
+    check(
+        "[[stage]]\nkind = 'highshelf'\n",
+        &[("edge_hz", &["freq", "cutoff", "corner_hz"]), ("slope", &["S", "shelf_slope", "steepness", "slop"])],
+    );
+    check("[[stage]]\nkind = 'weighting'\n", &[("curve", &["weighting", "weight", "curv", "Curve"])]);
+}
+
+#[test]
+fn keys_of_transfer_functions() {
+    check(
+        "[[stage]]\nkind = 'digital'\n",
+        &[
+            ("numerator", &["num", "b", "numerater"]),
+            ("denominator", &["den", "a", "Denominator"]),
+            ("sections", &["sos", "section", "biquads"]),
+            ("zeros", &["zero", "z", "zeroes"]),
+            ("poles", &["pole", "p"]),
+            ("gain", &["k", "scale", "gian"]),
+            ("rate_hz", &["rate", "sample_rate", "samplerate_hz", "fs", "sr"]),
+        ],
+    );
+    check(
+        "[[stage]]\nkind = 'analog'\n",
+        &[("match_hz", &["prewarp", "prewarp_hz", "match", "matched_hz"]), ("poles_hz", &["poles_khz"])],
     );
 }
 
@@ -101,6 +140,8 @@ fn keys_of_the_output_and_the_top() {
             ("band", &["bands", "requirements"]),
             ("output", &["out", "ouput"]),
             ("rate", &["sample_rate", "samplerate", "fs", "time_expansion", "TE", "rate_hz", "raet"]),
+            ("phase", &["zero_phase", "zerophase", "direction", "pahse"]),
+            ("design", &["mode", "auto_design", "desing"]),
             ("beyond_half_rate", &["nyquist", "beyond_nyquist", "beyond-half-rate"]),
             ("reference_band", &["reference", "ref", "ref_band", "referenceBand", "refrence_band", "reference_hz"]),
         ],
@@ -123,8 +164,13 @@ fn a_key_in_the_wrong_table_is_sent_to_the_right_one() {
         "spec.toml:1:1: unknown key \"edge_hz\" in the spec; edge_hz belongs in a stage"
     );
     assert_eq!(
-        refused(&format!("{notch}gain_db = 40")),
-        "spec.toml:5:1: unknown key \"gain_db\" in the notch stage; gain_db belongs in output"
+        refused(&format!("{notch}overload = 'clip'")),
+        "spec.toml:5:1: unknown key \"overload\" in the notch stage; overload belongs in output"
+    );
+    assert_eq!(
+        refused(&format!("{notch}phase = 'zero'")),
+        "spec.toml:5:1: unknown key \"phase\" in the notch stage; \
+         phase belongs at the top of the spec, outside every table"
     );
 }
 
@@ -196,7 +242,8 @@ fn long_texts_are_cut_and_not_compared() {
         said,
         format!(
             "spec.toml:1:1: unknown key \"{}...\" in the spec; \
-             known keys here: title, beyond_half_rate, reference_band, rate, output, stage, band",
+             known keys here: title, beyond_half_rate, reference_band, rate, phase, design, auto, output, \
+             stage, band",
             "x".repeat(60)
         )
     );
@@ -211,10 +258,10 @@ fn a_key_in_decibels_is_never_meant_to_be_one_in_hertz() {
 
 #[test]
 fn a_key_of_another_meaning_is_not_bent_to_a_known_one() {
-    for key in ["phase", "slope", "stop_edge_hz", "numerator", "poles", "match_hz", "enabled", "rate"] {
+    for key in ["phase", "max_sections", "enabled", "rate"] {
         assert_eq!(suggested(LOWPASS, key), None, "{key}");
     }
-    for key in ["design", "history", "phase", "channels"] {
+    for key in ["history", "channels", "numerator", "max_sections"] {
         assert_eq!(suggested("", key), None, "{key}");
     }
 }

@@ -215,13 +215,15 @@ fn what_every_stage_needs() {
     assert_eq!(
         refused("[[stage]]\nq = 3"),
         "spec.toml:1:1: the stage has no kind; \
-         say what it does: kind is one of lowpass, highpass, bandpass, bandstop, notch"
+         say what it does: kind is one of lowpass, highpass, bandpass, bandstop, notch, \
+         peak, lowshelf, highshelf, weighting, digital, analog"
     );
     assert_eq!(
         lowpass(""),
         "spec.toml:1:1: the lowpass stage has no family; \
          choose one of butterworth, chebyshev1, chebyshev2, elliptic, bessel\n\
-         spec.toml:1:1: the lowpass stage has no order; add the order of the low-pass prototype\n\
+         spec.toml:1:1: the lowpass stage has neither order nor stop_edge_hz; \
+         add the order of the low-pass prototype, or stop_edge_hz with ripple_db and stop_db\n\
          spec.toml:1:1: the lowpass stage has no edge_hz; add the frequency of the edge in hertz"
     );
 }
