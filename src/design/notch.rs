@@ -13,17 +13,19 @@
 //! only for w0 and dw near 0.) S. J. Orfanidis, Introduction to Signal Processing,
 //! 11.3, from memory.
 
-use super::transform::{Analog, Poles, Reference, Zeros, prewarp};
+use super::double::Double;
+use super::transform::{Analog, Poles, Reference, Zeros, warped};
 
 /// The notch at `center_hz`, `width_hz` wide between its half-power points; both
 /// above 0 and below half of `rate_hz`.
 pub fn analog(center_hz: f64, width_hz: f64, rate_hz: f64) -> Analog {
-    let square = prewarp(center_hz, rate_hz) * prewarp(center_hz, rate_hz);
-    let half_sum = -0.5 * (1.0 + square) * prewarp(width_hz, rate_hz);
+    let (center, width): (Double, Double) = (warped(center_hz, rate_hz), warped(width_hz, rate_hz));
+    let square = center.square();
+    let half_sum = (square + 1.0) * width * -0.5;
     Analog {
         poles: vec![Poles::Two { half_sum, product: square }],
         zeros: vec![Zeros::Pair { square }],
         reference: Reference::far_from(square),
-        reference_gain: 1.0,
+        reference_gain: Double::ONE,
     }
 }

@@ -9,11 +9,16 @@
 // Helpers of tests may fail like the tests themselves.
 #![allow(clippy::unwrap_used, clippy::panic)]
 
+mod accuracy;
+mod double;
 mod exact;
 mod laws;
+mod limited;
+mod limits;
 mod masks;
 mod prototypes;
 mod published;
 mod scipy;
 mod support;
 mod tables;
+mod zero_edges;

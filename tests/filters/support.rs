@@ -2,7 +2,7 @@
 
 use bandproof::design::{PlacedStage, response, sections};
 use bandproof::section::Section;
-use bandproof::spec::{Family, FilterKind, FilterStage, NotchStage, Placement, Row, Stage, Width};
+use bandproof::spec::{Family, FilterKind, FilterStage, NotchStage, Order, Placement, Row, Stage, Width};
 use std::f64::consts::PI;
 
 /// A filter as a test writes it.
@@ -29,7 +29,7 @@ impl Filter {
             stage: Stage::Filter(FilterStage {
                 kind: self.kind,
                 family: self.family,
-                order: self.order,
+                order: Order::Given(self.order),
                 placement,
                 ripple_db: self.ripple_db,
                 stop_db: self.stop_db,

@@ -4,7 +4,8 @@ Poles of the Bessel low-pass of order 1 to 20, scaled so that the gain at 1 rad/
 10 log10(1/2) dB. They are the roots of the reverse Bessel polynomial
 theta_n(s) = sum_k (2n-k)! / (2^(n-k) k! (n-k)!) s^k, found with 120 digits by mpmath's
 polyroots and divided by the frequency at which |theta_n(jw)|^2 = 2 theta_n(0)^2.
-Upper half-plane and real poles only, printed to 25 digits, largest imaginary part first.
+Upper half-plane and real poles only, largest imaginary part first, each part as the
+nearest f64 and what that leaves out.
 
 mpmath 1.4.1.
 """
@@ -39,7 +40,7 @@ for n in range(1, 21):
     real = [r / edge for r in roots if abs(mp.im(r)) <= mp.mpf(10) ** -60]
     assert len(upper) == n // 2 and len(real) == n % 2
     print(f"    // order {n}")
-    print("    &[" if n > 1 else "    &[", end="")
-    rows = [f"({mp.nstr(mp.re(r), 25)}, {mp.nstr(mp.im(r), 25)})" for r in upper]
-    rows += [f"({mp.nstr(mp.re(r), 25)}, 0.0)" for r in real]
-    print(", ".join(rows) + "],")
+    parts = lambda x: f"{float(x)!r}, {float(x - mp.mpf(float(x)))!r}"
+    rows = [f"[{parts(mp.re(r))}, {parts(mp.im(r))}]" for r in upper]
+    rows += [f"[{parts(mp.re(r))}, 0.0, 0.0]" for r in real]
+    print("    &[" + ", ".join(rows) + "],")

@@ -5,13 +5,13 @@
 //! v = asinh(1/e) / n.
 
 use super::{Prototype, on_ellipse, power_ratio_minus_one};
-use core::f64::consts::LN_10;
+use crate::design::double::Number;
 
 /// Order 1 or more, `ripple_db` > 0. An even order has the ripple's floor at DC.
-pub fn prototype(order: u32, ripple_db: f64) -> Prototype {
-    let epsilon = libm::sqrt(power_ratio_minus_one(ripple_db));
-    let v = libm::asinh(1.0 / epsilon) / f64::from(order);
-    let (a, b) = (libm::sinh(v), libm::cosh(v));
+pub fn prototype<N: Number>(order: u32, ripple_db: f64) -> Prototype<N> {
+    let epsilon = power_ratio_minus_one(N::from(ripple_db)).root();
+    let v = (N::ONE / epsilon).area_sinh() / f64::from(order);
+    let (a, b) = v.hyperbolic();
     Prototype {
         zeros_rad: Vec::new(),
         poles: on_ellipse(order, a, b),
@@ -21,6 +21,6 @@ pub fn prototype(order: u32, ripple_db: f64) -> Prototype {
 }
 
 /// The gain at DC of a pass band that ripples between 0 and `-ripple_db`.
-pub(super) fn dc_gain(order: u32, ripple_db: f64) -> f64 {
-    if order.is_multiple_of(2) { libm::exp(-ripple_db * (LN_10 / 20.0)) } else { 1.0 }
+pub(super) fn dc_gain<N: Number>(order: u32, ripple_db: f64) -> N {
+    if order.is_multiple_of(2) { (N::LN_10 * -ripple_db / 20.0).exponential() } else { N::ONE }
 }

@@ -2,7 +2,8 @@
 //!
 //! One file a family. All are closed forms whose real and imaginary parts are
 //! products of positive factors, so that both keep their digits however near the
-//! imaginary axis a pole lies.
+//! imaginary axis a pole lies; of twice the digits of f64, which only the coefficients
+//! of sections are rounded to.
 
 mod bessel;
 mod butterworth;
@@ -10,9 +11,8 @@ mod chebyshev1;
 mod chebyshev2;
 mod elliptic;
 
+use super::double::{Complex, Double, Number};
 use crate::spec::Family;
-use core::f64::consts::{LN_10, PI};
-use num_complex::Complex64;
 
 /// An analog low-pass whose edge is at 1 rad/s.
 ///
@@ -25,28 +25,46 @@ use num_complex::Complex64;
 /// The zeros are at +-jZ for each Z of `zeros_rad`, the poles at p and its conjugate
 /// for each p of `poles`, and at r = `real_pole` where the order is odd.
 #[derive(Clone, Debug, PartialEq)]
-pub struct Prototype {
+pub struct Prototype<N = Double> {
     /// Zeros on the positive imaginary axis, rad/s.
-    pub zeros_rad: Vec<f64>,
+    pub zeros_rad: Vec<N>,
     /// Poles in the upper half-plane (re < 0, im > 0), rad/s.
-    pub poles: Vec<Complex64>,
+    pub poles: Vec<Complex<N>>,
     /// The real pole of an odd order, rad/s, negative.
-    pub real_pole: Option<f64>,
+    pub real_pole: Option<N>,
     /// H(0): 1, or the ripple's floor for Chebyshev I and elliptic of even order.
-    pub dc_gain: f64,
+    pub dc_gain: N,
 }
 
-impl Prototype {
+impl<N: Number> Prototype<N> {
     /// Number of poles.
     pub fn order(&self) -> usize {
         2 * self.poles.len() + usize::from(self.real_pole.is_some())
     }
 
     /// The constant before the product of zeros over the product of poles.
-    pub fn gain(&self) -> f64 {
-        let poles: f64 = self.poles.iter().map(|p| p.re * p.re + p.im * p.im).product();
-        let zeros: f64 = self.zeros_rad.iter().map(|z| z * z).product();
-        self.dc_gain * poles * self.real_pole.map_or(1.0, |p| -p) / zeros
+    pub fn gain(&self) -> N {
+        let poles = self.poles.iter().fold(N::ONE, |product, &p| product * p.squared_magnitude());
+        let zeros = self.zeros_rad.iter().fold(N::ONE, |product, z| product * z.squared());
+        self.dc_gain * poles * self.real_pole.map_or(N::ONE, |p| -p) / zeros
+    }
+
+    /// -20 log10 |H(jw)| at `frequency_rad` (0 or above, finite), dB, to the digits of f64;
+    /// infinite at a zero.
+    pub fn attenuation_db(&self, frequency_rad: f64) -> f64 {
+        let w = frequency_rad;
+        let pairs = self.poles.iter().map(|p| {
+            // |jw - p|^2 |jw - p*|^2 / |p|^4: no difference of squares that would cancel.
+            let (near, far) = (w - p.im.hi(), w + p.im.hi());
+            let square = p.re.hi() * p.re.hi();
+            let whole = square + p.im.hi() * p.im.hi();
+            (square + near * near) / whole * ((square + far * far) / whole)
+        });
+        let real = self.real_pole.map(|r| 1.0 + (w / r.hi()) * (w / r.hi()));
+        let falls: f64 = pairs.chain(real).map(libm::log10).sum();
+        let rises: f64 =
+            self.zeros_rad.iter().map(|z| libm::log10(((z.hi() - w) / z.hi() * ((z.hi() + w) / z.hi())).abs())).sum();
+        10.0 * falls - 20.0 * (rises + libm::log10(self.dc_gain.hi()))
     }
 }
 
@@ -96,6 +114,28 @@ pub fn new(
     ripple_db: Option<f64>,
     stop_db: Option<f64>,
 ) -> Result<Prototype, PrototypeError> {
+    made(family, order, ripple_db, stop_db)
+}
+
+/// [`new`] in f64, in a fraction of the time: what searches go by.
+///
+/// # Errors
+/// As [`new`].
+pub fn approximate(
+    family: Family,
+    order: u32,
+    ripple_db: Option<f64>,
+    stop_db: Option<f64>,
+) -> Result<Prototype<f64>, PrototypeError> {
+    made(family, order, ripple_db, stop_db)
+}
+
+fn made<N: Number>(
+    family: Family,
+    order: u32,
+    ripple_db: Option<f64>,
+    stop_db: Option<f64>,
+) -> Result<Prototype<N>, PrototypeError> {
     let highest = family.highest_order();
     if order == 0 || order > highest {
         return Err(PrototypeError::Order { family, order, highest });
@@ -119,7 +159,7 @@ pub fn new(
 }
 
 /// The family's name in prose.
-fn family_name(family: Family) -> &'static str {
+pub(super) fn family_name(family: Family) -> &'static str {
     match family {
         Family::Butterworth => "Butterworth",
         Family::Chebyshev1 => "Chebyshev I",
@@ -135,21 +175,20 @@ fn given(found: Option<f64>) -> String {
 }
 
 /// 10^(db/10) - 1 without loss for small `db`.
-fn power_ratio_minus_one(db: f64) -> f64 {
-    libm::expm1(db * (LN_10 / 10.0))
+pub(super) fn power_ratio_minus_one<N: Number>(db: N) -> N {
+    (db * N::LN_10 / 10.0).exponential_m1()
 }
 
 /// -a sin t + j b cos t at the `order / 2` angles t = (2k-1) pi / (2 order) below
 /// pi/2, k = 1, 2, ...: the poles in the upper half-plane of the families whose poles
 /// lie on a circle or ellipse. The cosine is taken as the sine of the rest to pi/2,
 /// which keeps its digits near the real axis.
-fn on_ellipse(order: u32, a: f64, b: f64) -> Vec<Complex64> {
-    (1..=order / 2)
-        .map(|k| Complex64::new(-a * angle_sin(2 * k - 1, order), b * angle_sin(order - (2 * k - 1), order)))
-        .collect()
+fn on_ellipse<N: Number>(order: u32, a: N, b: N) -> Vec<Complex<N>> {
+    let sin = |m: u32| angle_sin::<N>(m, order);
+    (1..=order / 2).map(|k| Complex { re: -a * sin(2 * k - 1), im: b * sin(order - (2 * k - 1)) }).collect()
 }
 
 /// sin(m pi / (2 order)).
-fn angle_sin(m: u32, order: u32) -> f64 {
-    libm::sin(PI * f64::from(m) / f64::from(2 * order))
+fn angle_sin<N: Number>(m: u32, order: u32) -> N {
+    (N::PI * f64::from(m) / f64::from(2 * order)).circular().0
 }

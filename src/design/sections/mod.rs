@@ -5,15 +5,18 @@
 //! and gain (`arrange`). Stages stay in the spec's order, and each keeps its own
 //! gain.
 
-mod arrange;
+pub(super) mod arrange;
+pub(super) mod coefficients;
 mod pairing;
 
 use super::prototype::{self, Prototype};
+use super::recipe::{self, FilterRecipe, Recipe};
+use super::rounding::Rounded;
 use super::transform::{self, Analog, Edges};
 use super::wording::figure;
-use super::{DesignError, PlacedStage, notch};
+use super::{DesignError, PlacedStage, equalizer, notch, transfer, weighting};
 use crate::section::Section;
-use crate::spec::{FilterKind, FilterStage, NotchStage, Stage};
+use crate::spec::{FilterKind, Phase};
 use core::f64::consts::PI;
 
 /// A pole must lie at least this far inside the unit circle.
@@ -31,31 +34,58 @@ pub const POLE_MARGIN: f64 = 1e-12;
 /// (0.0002 dB).
 pub const END_MARGIN: f64 = 2e-12;
 
-/// The sections of the whole cascade, in the order they run.
+/// The sections of one causal pass of all `stages`, in the order they run.
 ///
 /// # Errors
-/// [`DesignError::Edges`] and [`DesignError::Prototype`] for stages that did not come
-/// from a placed spec; [`DesignError::PoleAtUnitCircle`] and
-/// [`DesignError::PoleAtEnd`] for filters that f64 coefficients can't hold.
+/// As [`build_stage`], and those of [`recipe::recipe`].
 pub fn build(stages: &[PlacedStage], rate_hz: f64) -> Result<Vec<Section>, DesignError> {
     let mut cascade = Vec::new();
-    for stage in stages {
-        cascade.append(&mut build_stage(stage, rate_hz)?);
+    for placed in stages {
+        let recipe = recipe::recipe(placed, Phase::Causal, rate_hz)?;
+        cascade.append(&mut build_stage(placed, &recipe, rate_hz)?);
     }
     Ok(cascade)
 }
 
-/// The sections of one stage, or of one line of a row, in the order they run.
+/// The sections of one pass of one stage, or of one line of a row, in the order they run.
 ///
 /// # Errors
-/// As [`build`].
-pub fn build_stage(placed: &PlacedStage, rate_hz: f64) -> Result<Vec<Section>, DesignError> {
-    let sections = match &placed.stage {
-        Stage::Filter(stage) => filter(placed, stage, rate_hz)?,
-        Stage::Notch(stage) => notch_sections(placed, stage, rate_hz)?,
+/// [`DesignError::Edges`] and [`DesignError::Prototype`] for stages that did not come
+/// from a placed spec; [`DesignError::PoleAtUnitCircle`] and
+/// [`DesignError::PoleAtEnd`] for filters that f64 coefficients can't hold;
+/// [`DesignError::Transfer`] and [`DesignError::Weighting`].
+pub fn build_stage(placed: &PlacedStage, recipe: &Recipe, rate_hz: f64) -> Result<Vec<Section>, DesignError> {
+    Ok(plain(&finish_stage(placed, recipe, rate_hz)?))
+}
+
+/// [`build_stage`], with what rounding dropped of each section.
+///
+/// # Errors
+/// As [`build_stage`].
+pub fn finish_stage(placed: &PlacedStage, recipe: &Recipe, rate_hz: f64) -> Result<Vec<Rounded>, DesignError> {
+    let stage = || placed.label();
+    let sections = match recipe {
+        Recipe::Filter(recipe) => filter(placed, recipe, rate_hz)?,
+        Recipe::Notch { center_hz, width_hz } => notch_sections(placed, *center_hz, *width_hz, rate_hz)?,
+        Recipe::Equalizer(equalizer) => {
+            let section = equalizer::finished(equalizer, rate_hz).ok_or_else(|| DesignError::Edges {
+                stage: stage(),
+                found: format!("{} Hz", figure(equalizer.hz)),
+                expected: "it needs a frequency above 0 and below half the sample rate",
+                rate_hz,
+            })?;
+            vec![section]
+        }
+        Recipe::Weighting(curve) => weighting::sections(*curve, rate_hz)
+            .map(|sections| sections.into_iter().map(Rounded::unknown).collect())
+            .map_err(|source| DesignError::Weighting { stage: stage(), source })?,
+        Recipe::Digital(digital) => transfer::finish_digital(digital, rate_hz)
+            .map_err(|source| DesignError::Transfer { stage: stage(), source })?,
+        Recipe::Analog(analog) => transfer::finish_analog(analog, rate_hz)
+            .map_err(|source| DesignError::Transfer { stage: stage(), source })?,
     };
-    for section in &sections {
-        check_margins(placed, section, rate_hz)?;
+    for one in &sections {
+        check_margins(placed, &one.section, rate_hz)?;
     }
     Ok(sections)
 }
@@ -70,14 +100,11 @@ pub struct StageSize {
     pub sections: u32,
 }
 
-/// The size of one stage, or of one line of a row.
-pub fn size(stage: &Stage) -> StageSize {
-    let total_order = match stage {
-        Stage::Filter(FilterStage { kind: FilterKind::Lowpass | FilterKind::Highpass, order, .. }) => *order,
-        Stage::Filter(FilterStage { order, .. }) => order.saturating_mul(2),
-        Stage::Notch(_) => 2,
-    };
-    StageSize { total_order, sections: total_order.div_ceil(2) }
+/// The size of one stage, or of one line of a row, that became `sections`.
+pub fn size(sections: &[Section]) -> StageSize {
+    let degree = |p: [f64; 3]| if p[2] != 0.0 { 2 } else { u32::from(p[1] != 0.0) };
+    let total_order = sections.iter().map(|section| degree(section.a).max(degree(section.b))).sum();
+    StageSize { total_order, sections: u32::try_from(sections.len()).unwrap_or(u32::MAX) }
 }
 
 /// Radius of the outer pole of a section, 0 or above.
@@ -95,13 +122,13 @@ pub fn pole_radius(section: &Section) -> f64 {
     1.0 - 2.0 * product / (middle + libm::sqrt(discriminant))
 }
 
-fn filter(placed: &PlacedStage, stage: &FilterStage, rate_hz: f64) -> Result<Vec<Section>, DesignError> {
-    let prototype = prototype::new(stage.family, stage.order, stage.ripple_db, stage.stop_db)
-        .map_err(|source| DesignError::Prototype { stage: label(placed), source })?;
-    from_prototype(&prototype, stage.kind, &placed.edges_hz, rate_hz).ok_or_else(|| DesignError::Edges {
-        stage: label(placed),
-        found: format!("edges_hz = {:?}", placed.edges_hz),
-        expected: match stage.kind {
+fn filter(placed: &PlacedStage, recipe: &FilterRecipe, rate_hz: f64) -> Result<Vec<Rounded>, DesignError> {
+    let prototype = prototype::new(recipe.family, recipe.order, recipe.ripple_db, recipe.stop_db)
+        .map_err(|source| DesignError::Prototype { stage: placed.label(), source })?;
+    finished(&prototype, recipe.kind, &recipe.edges_hz, rate_hz).ok_or_else(|| DesignError::Edges {
+        stage: placed.label(),
+        found: format!("edges_hz = {:?}", recipe.edges_hz),
+        expected: match recipe.kind {
             FilterKind::Lowpass | FilterKind::Highpass => "it needs one edge above 0 and below half the sample rate",
             FilterKind::Bandpass | FilterKind::Bandstop => {
                 "it needs two rising edges above 0 and below half the sample rate"
@@ -115,6 +142,10 @@ fn filter(placed: &PlacedStage, stage: &FilterStage, rate_hz: f64) -> Result<Vec
 /// prototype: one edge for the first two, two rising ones for the others, all above 0
 /// and below half of `rate_hz`; `None` otherwise. Margins are not checked.
 pub fn from_prototype(prototype: &Prototype, kind: FilterKind, edges_hz: &[f64], rate_hz: f64) -> Option<Vec<Section>> {
+    Some(plain(&finished(prototype, kind, edges_hz, rate_hz)?))
+}
+
+fn finished(prototype: &Prototype, kind: FilterKind, edges_hz: &[f64], rate_hz: f64) -> Option<Vec<Rounded>> {
     let inside = |f: f64| f > 0.0 && f < rate_hz / 2.0;
     let edges = match *edges_hz {
         [edge] if inside(edge) => Edges::one(edge, rate_hz),
@@ -125,23 +156,25 @@ pub fn from_prototype(prototype: &Prototype, kind: FilterKind, edges_hz: &[f64],
     Some(from_analog(&analog))
 }
 
-fn from_analog(analog: &Analog) -> Vec<Section> {
+/// The sections alone.
+pub fn plain(sections: &[Rounded]) -> Vec<Section> {
+    sections.iter().map(|one| one.section).collect()
+}
+
+fn from_analog(analog: &Analog) -> Vec<Rounded> {
     arrange::arrange(&pairing::pair(analog), analog)
 }
 
-fn notch_sections(placed: &PlacedStage, stage: &NotchStage, rate_hz: f64) -> Result<Vec<Section>, DesignError> {
-    let harmonic = placed.harmonic.unwrap_or(1);
-    // From the row, not from the edges: their mean would round.
-    let line = stage.row.lines().find(|line| line.harmonic == harmonic);
-    let (center_hz, width_hz) = match (line, stage.row.width) {
-        (Some(line), crate::spec::Width::Hz(hz)) => (line.center_hz, hz),
-        (Some(line), crate::spec::Width::Q(q)) => (line.center_hz, line.center_hz / q),
-        (None, _) => (0.0, 0.0),
-    };
+fn notch_sections(
+    placed: &PlacedStage,
+    center_hz: f64,
+    width_hz: f64,
+    rate_hz: f64,
+) -> Result<Vec<Rounded>, DesignError> {
     let inside = |f: f64| f > 0.0 && f < rate_hz / 2.0;
     if !(inside(center_hz) && inside(width_hz)) {
         return Err(DesignError::Edges {
-            stage: label(placed),
+            stage: placed.label(),
             found: format!("center {center_hz} Hz, width {width_hz} Hz"),
             expected: "center and width of a notch lie above 0 and below half the sample rate",
             rate_hz,
@@ -150,31 +183,25 @@ fn notch_sections(placed: &PlacedStage, stage: &NotchStage, rate_hz: f64) -> Res
     Ok(from_analog(&notch::analog(center_hz, width_hz, rate_hz)))
 }
 
+/// Whether f64 coefficients hold the poles of `section`: see [`POLE_MARGIN`] and
+/// [`END_MARGIN`].
+pub(super) fn has_margins(section: &Section) -> bool {
+    let [_, a1, a2] = section.a;
+    let near_end = |sign: f64| a2 != 0.0 && (1.0 + sign * a1) + a2 < END_MARGIN;
+    1.0 - pole_radius(section) >= POLE_MARGIN && !near_end(1.0) && !near_end(-1.0)
+}
+
 fn check_margins(placed: &PlacedStage, section: &Section, rate_hz: f64) -> Result<(), DesignError> {
+    if has_margins(section) {
+        return Ok(());
+    }
     let [_, a1, a2] = section.a;
     let distance = 1.0 - pole_radius(section);
     if distance < POLE_MARGIN || distance.is_nan() {
         let cos = (-a1 / (2.0 * libm::sqrt(a2.abs()))).clamp(-1.0, 1.0);
         let frequency_hz = libm::acos(cos) / (2.0 * PI) * rate_hz;
-        return Err(DesignError::PoleAtUnitCircle { stage: label(placed), frequency_hz, distance, rate_hz });
+        return Err(DesignError::PoleAtUnitCircle { stage: placed.label(), frequency_hz, distance, rate_hz });
     }
-    if a2 != 0.0 {
-        for (sign, end) in [(1.0, "0 Hz"), (-1.0, "half the sample rate")] {
-            if (1.0 + sign * a1) + a2 < END_MARGIN {
-                return Err(DesignError::PoleAtEnd { stage: label(placed), end, rate_hz });
-            }
-        }
-    }
-    Ok(())
-}
-
-/// `stage 2, line 7 (350 Hz)`; the number is the one a reader of the spec counts.
-fn label(placed: &PlacedStage) -> String {
-    let line = placed.harmonic.map(|harmonic| format!(", line {harmonic}")).unwrap_or_default();
-    let frequency = match *placed.edges_hz {
-        [edge] => format!("{} Hz", figure(edge)),
-        [low, high] => format!("{} Hz", figure((low + high) / 2.0)),
-        _ => "no edges".to_owned(),
-    };
-    format!("stage {}{line} ({frequency})", placed.stage_index + 1)
+    let end = if (1.0 + a1) + a2 < END_MARGIN { "0 Hz" } else { "half the sample rate" };
+    Err(DesignError::PoleAtEnd { stage: placed.label(), end, rate_hz })
 }

@@ -21,7 +21,7 @@ pub(super) fn pair(analog: &Analog) -> Vec<Unit> {
             Poles::Two { half_sum, product } => {
                 // Squared cosine of the angle to the negative real axis: above 1 for
                 // two real poles.
-                pairs.push((half_sum * half_sum / product, product, poles));
+                pairs.push((half_sum.hi * half_sum.hi / product.hi, product.hi, poles));
                 free.push(zeros);
             }
         }
@@ -41,7 +41,7 @@ pub(super) fn pair(analog: &Analog) -> Vec<Unit> {
 /// Distance between zeros and a pole pair in log W, as a ratio of squares of 1 or more.
 fn far(zeros: Zeros, product: f64) -> f64 {
     match zeros {
-        Zeros::Pair { square } => (square / product).max(product / square),
+        Zeros::Pair { square } => (square.hi / product).max(product / square.hi),
         Zeros::AtInfinity | Zeros::AtZero | Zeros::AtBoth => f64::INFINITY,
     }
 }
