@@ -1,4 +1,5 @@
-//! Sections over samples: the wavefront kernel and its start state.
+//! Sections over samples: the wavefront kernel and its start state; [`both_ways`] runs it
+//! forward and backward.
 //!
 //! Every section is run in transposed direct form II, with the state `s1`, `s2`
 //! and exactly these operations in this order, each rounded once (no fused
@@ -37,6 +38,7 @@
 //! `s2` of magnitude below [`CLEAR_BELOW`] becomes zero. The index counts from the
 //! start of the recording, so block ends don't matter, and no processor mode is touched.
 
+pub mod both_ways;
 mod group;
 mod kernel;
 #[doc(hidden)]
@@ -76,6 +78,18 @@ impl Cascade {
     pub fn latency_frames(&self) -> usize {
         self.groups.iter().map(Group::latency_frames).sum()
     }
+}
+
+/// `s1`, `s2` of each section in the steady state of the constant input `first`, in which
+/// a channel starts that begins with it: see [Start](self#start).
+pub fn start_states(sections: &[Section], first: f64) -> Vec<[f64; 2]> {
+    let mut constant = first;
+    let start = |section| {
+        let start = start::steady(section, constant);
+        constant = start.output;
+        [start.s1, start.s2]
+    };
+    sections.iter().map(start).collect()
 }
 
 /// The state of one recording's channels on their way through a [`Cascade`].

@@ -1,5 +1,5 @@
-//! A cascade struck once: its impulse response frame by frame, and the spectrum of
-//! what is still to come.
+//! A cascade struck once: its impulse response frame by frame, or one side of that of two
+//! passes, and the spectrum of what is still to come.
 //!
 //! This simulation is the design's own and shares nothing with the code that filters
 //! recordings.
@@ -61,6 +61,46 @@ impl Ring {
         ring
     }
 
+    /// The two-sided response of the cascade run forward and backward, r\[m\] = sum of h\[k\]
+    /// h\[k + m\] over k: the ring whose frames are r\[1\], r\[2\], ..., and r\[0\].
+    ///
+    /// A state in which the cascade puts out h\[k + 1\], h\[k + 2\], ... is there once h\[k\] has
+    /// come out of it. What comes out is linear in the state, so that the sum of these states,
+    /// each times h\[k\], puts out r\[1\], r\[2\], ... It runs over the first `frames` frames; what
+    /// is then left of h is left out twice over.
+    pub fn both_ways(sections: &[Section], frames: u64) -> (Ring, f64) {
+        let mut ring = Ring::strike(sections);
+        let mut sum = Ring { lanes: ring.lanes.clone(), frame: 1 };
+        sum.scale(0.0);
+        let mut center = 0.0;
+        for _ in 0..frames {
+            let h = ring.advance();
+            center += h * h;
+            sum.add(h, &ring);
+        }
+        (sum, center)
+    }
+
+    fn states(&mut self) -> impl Iterator<Item = &mut [f64; WIDTH]> {
+        self.lanes.iter_mut().flat_map(|lanes| lanes.s.iter_mut().chain([&mut lanes.y]))
+    }
+
+    fn scale(&mut self, factor: f64) {
+        self.states().flatten().for_each(|state| *state *= factor);
+    }
+
+    /// Adds `factor` times the state of another ring of the same sections.
+    fn add(&mut self, factor: f64, other: &Ring) {
+        for (sum, lanes) in self.lanes.iter_mut().zip(&other.lanes) {
+            let sums = sum.s.iter_mut().chain([&mut sum.y]);
+            for (sum, states) in sums.zip(lanes.s.iter().chain([&lanes.y])) {
+                for (sum, state) in sum.iter_mut().zip(states) {
+                    *sum += factor * state;
+                }
+            }
+        }
+    }
+
     /// Number of the next frame.
     pub fn frame(&self) -> u64 {
         self.frame
@@ -99,26 +139,15 @@ impl Ring {
     }
 
     fn flush(&mut self) {
-        for lanes in &mut self.lanes {
-            for state in lanes.s.iter_mut().chain([&mut lanes.y]).flatten() {
-                if state.abs() < FLUSH_BELOW {
-                    *state = 0.0;
-                }
+        for state in self.states().flatten() {
+            if state.abs() < FLUSH_BELOW {
+                *state = 0.0;
             }
         }
     }
 
     /// |sum of `h[m]` e^(-jwm) over all m still to come|, the magnitude that the
     /// remaining tail has at `angle` w, radians a frame.
-    ///
-    /// Exact for the state as it stands, however long the tail: with s1, s2 the state
-    /// of a section and X the transform of what is still to enter it,
-    ///
-    /// ```text
-    /// Y = (B X + s1 + s2 z^-1) / A        X of the next = y + z^-1 Y
-    /// ```
-    ///
-    /// where y is what the section put out last and its neighbor has not yet taken.
     pub fn tail(&self, angle: f64) -> f64 {
         let [height, ..] = self.tails([angle; WIDTH]);
         height
@@ -127,6 +156,25 @@ impl Ring {
     /// [`Ring::tail`] at several angles, which costs hardly more than at one: section
     /// waits for section, angle not for angle.
     pub fn tails(&self, angles: [f64; WIDTH]) -> [f64; WIDTH] {
+        self.transforms(angles).map(|(re, im)| libm::hypot(re, im))
+    }
+
+    /// Sum of `h[m]` e^(-jw(m - n)) over all m from the next frame n on: real and imaginary
+    /// part.
+    pub fn transform(&self, angle: f64) -> (f64, f64) {
+        let [sum, ..] = self.transforms([angle; WIDTH]);
+        sum
+    }
+
+    /// Exact for the state as it stands, however long the tail: with s1, s2 the state
+    /// of a section and X the transform of what is still to enter it,
+    ///
+    /// ```text
+    /// Y = (B X + s1 + s2 z^-1) / A        X of the next = y + z^-1 Y
+    /// ```
+    ///
+    /// where y is what the section put out last and its neighbor has not yet taken.
+    fn transforms(&self, angles: [f64; WIDTH]) -> [(f64, f64); WIDTH] {
         // z^-1 and z^-2 as real and imaginary parts.
         let back = angles.map(|angle| (libm::cos(angle), -libm::sin(angle)));
         let back2 = back.map(|(re, im)| (re * re - im * im, 2.0 * re * im));
@@ -149,7 +197,7 @@ impl Ring {
                 }
             }
         }
-        y.map(|(re, im)| libm::hypot(re, im))
+        y
     }
 }
 
@@ -212,6 +260,29 @@ mod tests {
             assert!((ring.tail(angle) - want).abs() < 1e-11, "frame {n}");
             let turned = angle * f64::from(n);
             left -= ring.advance() * Complex64::new(libm::cos(turned), -libm::sin(turned));
+        }
+    }
+    #[test]
+    fn both_ways_the_frames_are_the_autocorrelation_of_the_response() {
+        for count in 1..=6 {
+            let sections: Vec<_> = (0..count).map(|k| pair(0.9, 0.2 + 0.4 * k as f64, 0.5 * k as f64)).collect();
+            // 0.9^600 is 1e-27.
+            let h = plain(&sections, 600);
+            let lag = |m: usize| h.iter().zip(&h[m..]).map(|(a, b)| a * b).sum::<f64>();
+            let (mut ring, center) = Ring::both_ways(&sections, 600);
+            let scale = 1e-12 * lag(0);
+            assert!((center - lag(0)).abs() < scale, "{count} sections: {center} for {}", lag(0));
+            let (re, im) = ring.transform(0.7);
+            let sum = (1..300).fold((0.0, 0.0), |(re, im), m: usize| {
+                let angle = 0.7 * (m - 1) as f64;
+                (re + lag(m) * libm::cos(angle), im - lag(m) * libm::sin(angle))
+            });
+            assert!((re - sum.0).abs() + (im - sum.1).abs() < 100.0 * scale, "{count}: {re} {im} for {sum:?}");
+            for m in 1..200 {
+                assert_eq!(ring.frame(), m);
+                let (got, want) = (ring.advance(), lag(m as usize));
+                assert!((got - want).abs() < scale, "{count} sections, lag {m}: {got} for {want}");
+            }
         }
     }
 }

@@ -13,6 +13,12 @@
 //! than that. (`h[n]` itself is no measure: a narrow notch has `h[0]` near 1 and a ring of
 //! the height of width over rate, and yet a line in it comes through at full
 //! amplitude at first.)
+//!
+//! # Both ways
+//! Run forward and backward, the cascade has the autocorrelation r of h as its response,
+//! which reaches as far back as ahead. What is told of an end of the recording is the same
+//! for both: the tail T_n(w) is the sum of r\[m\] e^(-jwm) over m > n, on one side. It has the
+//! poles of one pass.
 
 use super::ring::{Ring, WIDTH};
 use super::{response, roots};
@@ -25,6 +31,10 @@ const MAX_FRAMES: u64 = 1 << 26;
 /// The tail is followed until it is this much below what was asked for, in case
 /// poles that beat let it rise again.
 const AGAIN: f64 = 0.25;
+
+/// Height of one pass' tail from which on it is left out of both passes' response: what is
+/// lost there is its square.
+const LEFT_OUT: f64 = 1e-8;
 
 /// Parts into which the frames between two looks are cut, over and over.
 const PARTS: u64 = 64;
@@ -52,6 +62,13 @@ pub fn settling_frames(sections: &[Section], fall_db: f64) -> u64 {
     Tail::new(sections).below(limit)
 }
 
+/// [`settling_frames`] of the cascade run forward and backward: frames that are not clean at
+/// either end.
+pub fn settling_frames_both_ways(sections: &[Section], fall_db: f64) -> u64 {
+    let limit = from_db(-fall_db);
+    Tail::both_ways(sections).0.below(limit)
+}
+
 /// Frames until a line at `frequency_hz` that sounds evenly from the start has fallen by
 /// `reduce_db` for good; `None` if it never does.
 ///
@@ -72,31 +89,64 @@ pub fn startup_frames(sections: &[Section], frequency_hz: f64, rate_hz: f64, red
 /// [`startup_frames`] of many lines (Hz, dB) in one pass over the impulse response.
 pub fn startups(sections: &[Section], rate_hz: f64, lines: &[(f64, f64)]) -> Vec<Option<u64>> {
     let mut tail = Tail::new(sections);
-    let mut runs: Vec<Option<Run>> = lines
-        .iter()
-        .map(|&(frequency_hz, reduce_db)| {
-            let limit = from_db(-reduce_db);
-            let steady = from_db(response::gain_db(sections, frequency_hz, rate_hz));
-            let room = limit - steady;
-            // At frame n at most |T_n(w)| + |T_n(0)| comes on top of the steady remainder.
-            (room > NEVER_WITHIN * limit).then(|| Run {
-                cycles_a_frame: frequency_hz / rate_hz,
-                limit_squared: limit * limit,
-                until: tail.surely_below(0.5 * room),
-                sum: (0.0, 0.0),
-                clean_from: 0,
-            })
-        })
-        .collect();
-    let frames = runs.iter().flatten().map(|run| run.until).max().unwrap_or(0).min(MAX_FRAMES);
+    let run = |&(frequency_hz, reduce_db): &(f64, f64)| {
+        let limit = from_db(-reduce_db);
+        let room = limit - from_db(response::gain_db(sections, frequency_hz, rate_hz));
+        // At frame n at most |T_n(w)| + |T_n(0)| comes on top of the steady remainder.
+        let mut until = || tail.surely_below(0.5 * room);
+        let cycles_a_frame = frequency_hz / rate_hz;
+        (room > NEVER_WITHIN * limit).then(|| Run::new(cycles_a_frame, limit, until(), Sum::Passed((0.0, 0.0))))
+    };
+    let runs = lines.iter().map(run).collect();
     let mut ring = Ring::strike(sections);
-    let mut rest = response::at(sections, 0.0, rate_hz).re;
+    follow(runs, response::at(sections, 0.0, rate_hz).re, || ring.advance())
+}
+
+/// [`startups`] of the cascade run forward and backward, at either end.
+///
+/// Before the first sample x\[0\] the input is taken to be 2 x\[0\] - x\[-n\], as the two passes
+/// have it, for as long as the filter rings. That is the line going on backward, but for
+/// 2 cos(p) (1 - cos wn), and the output is the real part of e^(jp) times
+///
+/// ```text
+/// |H(w)|^2 e^(jwn) + 2 (T_n(0) - Re(e^(jwn) T_n(w)))
+/// ```
+///
+/// whose magnitude is again the most that any starting phase makes of frame n, and of
+/// frame N - 1 - n, where time runs the other way.
+pub fn startups_both_ways(sections: &[Section], rate_hz: f64, lines: &[(f64, f64)]) -> Vec<Option<u64>> {
+    let (mut tail, center) = Tail::both_ways(sections);
+    let Some((ring, _)) = tail.looks.first() else { return vec![None; lines.len()] };
+    let mut ring = ring.clone();
+    let rest = center + ring.transform(0.0).0;
+    let run = |&(frequency_hz, reduce_db): &(f64, f64)| {
+        let limit = from_db(-reduce_db);
+        let gain = from_db(2.0 * response::gain_db(sections, frequency_hz, rate_hz));
+        let room = limit - gain;
+        let mut until = || tail.surely_below(0.25 * room);
+        let cycles_a_frame = frequency_hz / rate_hz;
+        (room > NEVER_WITHIN * limit).then(|| {
+            let (re, im) = ring.transform(TAU * cycles_a_frame);
+            let (cos, sin) = (libm::cos(TAU * cycles_a_frame), libm::sin(TAU * cycles_a_frame));
+            let left = (center + re * cos + im * sin, im * cos - re * sin);
+            Run::new(cycles_a_frame, limit, until(), Sum::Left { left, gain })
+        })
+    };
+    let runs = lines.iter().map(run).collect();
+    let mut center = Some(center);
+    follow(runs, rest, || center.take().unwrap_or_else(|| ring.advance()))
+}
+
+/// Sends the runs through the impulse response, whose next frame `advance` gives and whose
+/// sum is `rest`.
+fn follow(mut runs: Vec<Option<Run>>, mut rest: f64, mut advance: impl FnMut() -> f64) -> Vec<Option<u64>> {
+    let frames = runs.iter().flatten().map(|run| run.until).max().unwrap_or(0).min(MAX_FRAMES);
     let mut block = Vec::with_capacity(BLOCK_FRAMES);
     let mut first = 0;
     while first < frames {
         block.clear();
         block.extend((0..BLOCK_FRAMES).map(|_| {
-            let h = ring.advance();
+            let h = advance();
             rest -= h;
             (h, rest)
         }));
@@ -117,13 +167,24 @@ struct Run {
     limit_squared: f64,
     /// From this frame on the line is surely down.
     until: u64,
-    /// H(w) - T_n(w): the transform of `h[0]` to `h[n]`.
-    sum: (f64, f64),
+    sum: Sum,
     /// First frame after the last one that was above the limit.
     clean_from: u64,
 }
 
+/// What has come of the impulse response up to frame n, or what is left of it.
+enum Sum {
+    /// One pass: H(w) - T_n(w), the transform of `h[0]` to `h[n]`.
+    Passed((f64, f64)),
+    /// Both: T_n(w), and |H(w)|^2.
+    Left { left: (f64, f64), gain: f64 },
+}
+
 impl Run {
+    fn new(cycles_a_frame: f64, limit: f64, until: u64, sum: Sum) -> Self {
+        Run { cycles_a_frame, limit_squared: limit * limit, until, sum, clean_from: 0 }
+    }
+
     /// Takes `h[n]` and T_n(0) of the frames from `first` on.
     fn take(&mut self, first: u64, block: &[(f64, f64)]) {
         // The phase starts afresh with every block, lest the recursion drift.
@@ -133,10 +194,19 @@ impl Run {
         let step = -TAU * self.cycles_a_frame;
         let (step_re, step_im) = (libm::cos(step), libm::sin(step));
         for (n, &(h, rest)) in (first..).zip(block) {
-            self.sum.0 += h * re;
-            self.sum.1 += h * im;
-            // |y[n]|, turned by e^(-jwn).
-            let (y_re, y_im) = (self.sum.0 + rest * re, self.sum.1 + rest * im);
+            // y[n], turned by e^(-jwn), or its conjugate.
+            let (y_re, y_im) = match &mut self.sum {
+                Sum::Passed(sum) => {
+                    sum.0 += h * re;
+                    sum.1 += h * im;
+                    (sum.0 + rest * re, sum.1 + rest * im)
+                }
+                Sum::Left { left, gain } => {
+                    left.0 -= h * re;
+                    left.1 -= h * im;
+                    (*gain * re + 2.0 * (rest - (left.0 * re + left.1 * im)), *gain * im)
+                }
+            };
             if y_re * y_re + y_im * y_im > self.limit_squared {
                 self.clean_from = n + 1;
             }
@@ -173,6 +243,20 @@ struct Tail {
 
 impl Tail {
     fn new(sections: &[Section]) -> Tail {
+        let mut ring = Ring::strike(sections);
+        // T_0 is what comes after h[0].
+        ring.advance();
+        Tail::of(sections, ring)
+    }
+
+    /// The tail of r, on one side, and r\[0\].
+    fn both_ways(sections: &[Section]) -> (Tail, f64) {
+        let frames = Tail::new(sections).surely_below(LEFT_OUT).min(MAX_FRAMES);
+        let (ring, center) = Ring::both_ways(sections, frames);
+        (Tail::of(sections, ring), center)
+    }
+
+    fn of(sections: &[Section], ring: Ring) -> Tail {
         let mut angles = vec![0.0, PI];
         let mut time_constant: f64 = 1.0;
         for pole in roots::poles(sections) {
@@ -188,9 +272,6 @@ impl Tail {
         }
         angles.sort_by(f64::total_cmp);
         angles.dedup();
-        let mut ring = Ring::strike(sections);
-        // T_0 is what comes after h[0].
-        ring.advance();
         let step = (libm::ceil(time_constant / 4.0) as u64).clamp(1, MAX_FRAMES / 4);
         let mut tail = Tail { angles, time_constant, step, looks: Vec::new() };
         if !sections.is_empty() {
@@ -221,6 +302,10 @@ impl Tail {
             let Some((ring, height)) = self.looks.last() else { return Fall::Never };
             if *height <= AGAIN * limit {
                 break;
+            }
+            // A response that overflowed never comes down.
+            if !height.is_finite() {
+                return Fall::Beyond(MAX_FRAMES);
             }
             if ring.frame() > MAX_FRAMES {
                 let nepers = libm::log(height / limit).max(0.0);

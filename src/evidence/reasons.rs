@@ -48,9 +48,9 @@ fn needed(band: &BandTask, seconds: f64) -> Option<String> {
 /// Nothing of the recording is settled.
 pub fn unsettled(band: &BandTask, seconds: f64) -> String {
     match needed(band, seconds) {
-        Some(needed) => format!("nothing remains after the time the filter takes to settle: {needed}"),
+        Some(needed) => format!("nothing remains without the time the filter takes to settle: {needed}"),
         None => format!(
-            "nothing of its {seconds:.1} s remains after the time the filter takes to settle: use a longer recording"
+            "nothing of its {seconds:.1} s remains without the time the filter takes to settle: use a longer recording"
         ),
     }
 }

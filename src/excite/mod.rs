@@ -162,7 +162,8 @@ impl Plan {
             });
         }
         let layout = layout(&design, frames).ok_or_else(no_bands)?;
-        let bands: Vec<_> = design.bands.iter().map(|band| BandLevel::new(&layout, band, &design.sections)).collect();
+        let net_sections = design.net_sections();
+        let bands: Vec<_> = design.bands.iter().map(|band| BandLevel::new(&layout, band, &net_sections)).collect();
         Ok(Plan {
             rate_hz,
             frames,
@@ -229,7 +230,7 @@ fn frames(rate_hz: u32, seconds: f64) -> Result<u64, ExciteError> {
 
 fn layout(design: &Design, frames: u64) -> Option<Layout> {
     let rate_hz = design.rate_hz;
-    let settled = frames.saturating_sub(design.settling_frames);
+    let settled = frames.saturating_sub(design.unsettled_frames());
     let wanted = needs::wanted_segment(design)?;
     let longest_sweep = libm::rint(f64::from(rate_hz) * LONGEST_SWEEP_S) as u64;
     let sweep_frames = (frames / SWEEP_PART).min(longest_sweep);

@@ -51,11 +51,11 @@ impl Needs {
         let segment_s = wanted_segment(design)? as f64 / rate_hz;
         let shortest_s = MIN_SEGMENT_FRAMES as f64 / rate_hz;
         let halves = (FEWEST_SEGMENTS + 1) as f64 / 2.0;
-        let every_band_s = design.settling_s + (BINS / narrowest_hz).max(shortest_s);
+        let every_band_s = design.unsettled_s() + (BINS / narrowest_hz).max(shortest_s);
         Some(Needs {
-            least_s: design.settling_s + (FEWEST_BINS / widest_hz).max(shortest_s),
+            least_s: design.unsettled_s() + (FEWEST_BINS / widest_hz).max(shortest_s),
             every_band_s,
-            device_noise_s: every_band_s.max(design.settling_s + halves * segment_s),
+            device_noise_s: every_band_s.max(design.unsettled_s() + halves * segment_s),
         })
     }
 }

@@ -116,7 +116,7 @@ impl Batch<'_> {
         let _room = self.budget.enter(brief, &rate.treatment);
         let file = open::regular(&planned.found.path).map_err(Failure::Open)?;
         let metadata = file.metadata().map_err(Failure::Open)?;
-        let reader = Reader::open_as(file, self.plan.rate)?;
+        let reader = Reader::open_as(file, self.plan.spec.spec.rate)?;
         let header = known.insert(reader.header().clone());
         if Brief::of(header) != *brief {
             return Err(changed());

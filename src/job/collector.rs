@@ -26,29 +26,39 @@ pub struct Collector {
     /// The next frame of which both sides will come.
     position: u64,
     /// Frames as read, from `position` on, of which what is written has not come yet.
-    ahead: Vec<Vec<f64>>,
+    ahead: Vec<VecDeque<f64>>,
+    /// The first of them, on their way to the segments.
+    late: Vec<Vec<f64>>,
 }
 
 impl Collector {
     /// For a recording with `channels` channels whose first sample is about to come.
     pub fn new(plan: SegmentPlan, transform: Arc<Transform>, channels: usize) -> Self {
-        let ahead = vec![Vec::new(); channels];
-        Collector { plan, transform, open: VecDeque::new(), done: 0, position: 0, ahead }
+        let (ahead, late) = (vec![VecDeque::new(); channels], vec![Vec::new(); channels]);
+        Collector { plan, transform, open: VecDeque::new(), done: 0, position: 0, ahead, late }
     }
 
     /// Takes the next frames as read and as written. The written ones may lag behind,
     /// never run ahead; frames that no segment holds are dropped.
     pub fn take(&mut self, before: &[Vec<f64>], after: &[Vec<f64>]) {
         let length = |planes: &[Vec<f64>]| planes.first().map_or(0, Vec::len);
-        let late = length(&self.ahead).min(length(after));
+        let late = self.ahead.first().map_or(0, VecDeque::len).min(length(after));
         let fresh = length(before).min(length(after) - late);
-        let ahead = std::mem::take(&mut self.ahead);
-        self.pair(&ahead, 0..late, after, 0);
+        let mut first = std::mem::take(&mut self.late);
+        for (first, ahead) in first.iter_mut().zip(&mut self.ahead) {
+            first.clear();
+            first.extend(ahead.drain(..late));
+        }
+        self.pair(&first, 0..late, after, 0);
         self.pair(before, 0..fresh, after, late);
-        self.ahead = ahead;
+        self.late = first;
         for (ahead, before) in self.ahead.iter_mut().zip(before) {
-            ahead.drain(..late);
-            ahead.extend_from_slice(&before[fresh..]);
+            let more = &before[fresh..];
+            // Where the filter runs both ways this is most of the memory: not twice as much.
+            if ahead.capacity() < ahead.len() + more.len() {
+                ahead.reserve_exact(more.len() + ahead.len() / 4);
+            }
+            ahead.extend(more);
         }
     }
 

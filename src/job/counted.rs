@@ -22,6 +22,10 @@ impl<'a> Counted<'a> {
 }
 
 impl Progress for Counted<'_> {
+    fn finding(&self) {
+        self.inner.finding();
+    }
+
     fn planned(&self, recordings: u64, bytes: u64) {
         self.inner.planned(recordings, bytes);
     }

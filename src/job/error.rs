@@ -2,6 +2,7 @@
 
 use super::{Interrupted, NoiseError, RecordingError};
 use crate::design::DesignError;
+use crate::design::auto::AutoError;
 use crate::package::PackageError;
 use std::io;
 use std::path::PathBuf;
@@ -173,13 +174,23 @@ pub enum JobError {
         cause: io::Error,
     },
     /// The spec does not fit a sample rate of this input.
-    #[error("{cause}; the first recording with that rate is {recording}, and --exclude leaves recordings out")]
+    #[error(
+        "{cause}{}",
+        if cause.depends_on_rate() {
+            format!("; the first recording with that rate is {recording}, and --exclude leaves recordings out")
+        } else {
+            String::new()
+        }
+    )]
     Design {
         /// A recording with that rate.
         recording: String,
         /// What does not fit.
-        cause: DesignError,
+        cause: Box<DesignError>,
     },
+    /// No cascade is found that holds the bands at every sample rate of this input.
+    #[error("{0}")]
+    Auto(AutoError),
     /// The design check found requirements that can't hold.
     #[error("the spec can't hold, nothing was written:\n  {}", .0.join("\n  "))]
     Impossible(Vec<String>),

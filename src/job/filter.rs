@@ -52,8 +52,10 @@ pub struct FilterJob {
 }
 
 /// What a run would do.
-#[derive(Clone, Debug, Default, PartialEq)]
+#[derive(Clone, Debug, PartialEq)]
 pub struct DryRun {
+    /// The spec in force, with the stages that were found where it leaves them to the program.
+    pub spec: SpecFile,
     /// The recordings, sorted by path, after whatever could not be looked at.
     pub recordings: Vec<PlannedRecording>,
 }
@@ -96,7 +98,7 @@ fn run_in_pool(job: &FilterJob, progress: &dyn Progress) -> Result<Outcome, JobE
     let progress: &dyn Progress = &counted;
     let bytes = plan.to_do().map(|planned| planned.found.bytes).sum();
     progress.planned(plan.to_do().count() as u64, bytes);
-    let designs = design_entries(job, &plan)?;
+    let designs = design_entries(&plan)?;
     let skipped = Skipped { dot_underscore: plan.dot_underscore, other_files: plan.other_files };
     let mut seen = SummaryBuilder::new(&job.spec.spec).map_err(|error| defect(&error))?;
     let kept = (plan.recordings.len() - plan.to_do().count()) as u64;
@@ -106,7 +108,16 @@ fn run_in_pool(job: &FilterJob, progress: &dyn Progress) -> Result<Outcome, JobE
         let complete = !(job.scan && progress.interrupted());
         let seconds = clock.elapsed().as_secs_f64();
         let bytes_read = counted.bytes();
-        return Ok(Outcome { seconds, complete, bytes_read, kept, dry, ..Outcome::new(summary, highlights, designs) });
+        let found = plan.found_stages;
+        return Ok(Outcome {
+            found,
+            seconds,
+            complete,
+            bytes_read,
+            kept,
+            dry,
+            ..Outcome::new(summary, highlights, designs)
+        });
     }
     let (_lock, made) = match lock {
         Some(lock) => (lock, Vec::new()),
@@ -119,7 +130,7 @@ fn run_in_pool(job: &FilterJob, progress: &dyn Progress) -> Result<Outcome, JobE
     };
     if let Some(outcome) = all_done(job, &plan, skipped, &designs)? {
         let seconds = clock.elapsed().as_secs_f64();
-        return Ok(Outcome { seconds, kept, ..outcome });
+        return Ok(Outcome { found: plan.found_stages, seconds, kept, ..outcome });
     }
     spare_packages(job, &plan)?;
     let (documents, journal) = begin(job, &plan, &mut seen, progress).inspect_err(|_| paths::unmake(&made))?;
@@ -129,7 +140,7 @@ fn run_in_pool(job: &FilterJob, progress: &dyn Progress) -> Result<Outcome, JobE
     let (summary, highlights) = seen.finish(skipped);
     let deviation = plan.rates.values().map(|rate| rate.witness.deviation).reduce(f64::max);
     let run = run_entry(started, clock, job.jobs, deviation);
-    let head = Head::new(run, complete, spec_entry(&job.spec)?, designs);
+    let head = Head::new(run, complete, spec_entry(&plan.spec)?, designs);
     documents.finish(&|path| job.replace || plan.ours.iter().any(|ours| ours == path), &head, &journal, &summary)?;
     let package = match job.emit {
         Some(emit) if complete => emit_package(emit, job, &plan, &rfc3339(started), &journal, progress)?,
@@ -141,6 +152,7 @@ fn run_in_pool(job: &FilterJob, progress: &dyn Progress) -> Result<Outcome, JobE
         journal.remove().map_err(|cause| JobError::Record { what: "the journal", path: journal_path(job), cause })?;
     }
     Ok(Outcome {
+        found: plan.found_stages,
         report_path: Some(plan.report),
         table_path: job.table.clone(),
         package,
@@ -162,7 +174,7 @@ fn all_done(
     designs: &[DesignEntry],
 ) -> Result<Option<Outcome>, JobError> {
     let Some(told) = plan.earlier.told() else { return Ok(None) };
-    let head = Head::new(told.head.run.clone(), true, spec_entry(&job.spec)?, designs.to_vec());
+    let head = Head::new(told.head.run.clone(), true, spec_entry(&plan.spec)?, designs.to_vec());
     let is_there = |file: &Path| plan.ours.iter().any(|ours| ours == file) && file.is_file();
     let contents = package_contents(job, &plan.report, "", false);
     let package = job.emit.map(|emit| package::files(emit, &contents)).unwrap_or_default();
@@ -241,7 +253,7 @@ fn begin(
         let mut older = outdated.flat_map(|planned| plan.earlier.outputs(&planned.shown, planned.escaped));
         older.try_for_each(|older| journal.remember(&older))
     };
-    let identity = Identity::of(&job.spec.file_sha256);
+    let identity = Identity::of(&plan.spec).map_err(|error| JobError::Defect(error.to_string()))?;
     let journal = Journal::create(&job.output, &identity, keep).map_err(|cause| not_writable(&job.output, cause))?;
     // What the package says will not be true any more.
     if let Some(emit) = job.emit {
@@ -310,8 +322,8 @@ fn item(path: PathBuf, line: &str) -> io::Result<Option<Item>> {
     Ok(output.map(|output| Item { path, sha256: output.sha256, bytes: output.bytes }))
 }
 
-fn design_entries(job: &FilterJob, plan: &Plan) -> Result<Vec<DesignEntry>, JobError> {
-    let dither = plan::dither_name(&job.spec.spec);
+fn design_entries(plan: &Plan) -> Result<Vec<DesignEntry>, JobError> {
+    let dither = plan::dither_name(&plan.spec.spec);
     let entry = |rate: &RatePlan| DesignEntry::new(&rate.design, dither, Some(witness_entry(rate)?));
     plan.rates.values().map(|rate| entry(rate).map_err(|error| defect(&error))).collect()
 }
@@ -348,5 +360,5 @@ fn dry_run(job: &FilterJob, plan: &Plan, progress: &dyn Progress) -> DryRun {
         kept: planned.standing == Standing::Kept,
         problem: scanned.map(|seen| seen.problem).or(planned.usable().err().map(str::to_owned)),
     });
-    DryRun { recordings: unreadable.chain(recordings).collect() }
+    DryRun { spec: plan.spec.clone(), recordings: unreadable.chain(recordings).collect() }
 }

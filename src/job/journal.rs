@@ -8,10 +8,13 @@
 //! further line is one entry as JSON. A run that is killed leaves it, and the next run of
 //! the same job reads it ([`read`]).
 
+use crate::files::digest::hexadecimal;
 use crate::files::temporary;
 pub use crate::files::temporary::JOURNAL_NAME;
 use crate::report::{FORMAT, Recording};
+use crate::spec::SpecFile;
 use serde::{Deserialize, Serialize};
+use sha2::{Digest as _, Sha256};
 use std::collections::BTreeMap;
 use std::fs::File;
 use std::io::{self, BufRead, BufReader, Read, Seek, SeekFrom, Write};
@@ -29,16 +32,24 @@ pub struct Identity {
     pub tool_version: String,
     /// SHA-256 of the spec file, lower-case hexadecimal.
     pub spec_sha256: String,
+    /// The same of the spec in force, every default filled in, as JSON: stages that are found
+    /// from bands also depend on the sample rates of a run.
+    pub normalized_sha256: String,
 }
 
 impl Identity {
-    /// Of this program with a spec.
-    pub fn of(spec_sha256: &str) -> Self {
-        Identity {
+    /// Of this program with a spec in force.
+    ///
+    /// # Errors
+    /// The spec does not go into JSON, which no spec that was read does.
+    pub fn of(spec: &SpecFile) -> serde_json::Result<Self> {
+        let normalized = serde_json::to_vec(&spec.spec)?;
+        Ok(Identity {
             format: FORMAT,
             tool_version: env!("CARGO_PKG_VERSION").to_owned(),
-            spec_sha256: spec_sha256.to_owned(),
-        }
+            spec_sha256: spec.file_sha256.clone(),
+            normalized_sha256: hexadecimal(&Sha256::digest(&normalized)),
+        })
     }
 }
 

@@ -33,6 +33,7 @@ mod settled;
 pub(crate) mod sink;
 pub mod witness;
 
+use crate::design::auto::Found;
 use crate::report::{DesignEntry, Finite, Highlights, NotFinite, Run, SpecEntry, Summary};
 use crate::spec::SpecFile;
 pub use error::JobError;
@@ -54,6 +55,8 @@ pub type Pass<'a> = dyn Fn(u64) -> Result<(), Interrupted> + Sync + 'a;
 
 /// Hears how a run goes. Called from all threads.
 pub trait Progress: Sync {
+    /// Stages are being found from the bands, which may take a while.
+    fn finding(&self) {}
     /// The plan is made; this many recordings and bytes of samples are to be done.
     fn planned(&self, recordings: u64, bytes: u64);
     /// So many more input bytes went through.
@@ -89,6 +92,8 @@ pub struct Outcome {
     pub summary: Summary,
     /// What a person has to know first.
     pub highlights: Highlights,
+    /// The stages that were found from the bands, where the spec leaves them to the program.
+    pub found: Option<Found>,
     /// The spec at each sample rate.
     pub designs: Vec<DesignEntry>,
     /// Where the report is; `None` after a dry run.
@@ -117,6 +122,7 @@ impl Outcome {
         Outcome {
             summary,
             highlights,
+            found: None,
             designs,
             report_path: None,
             table_path: None,

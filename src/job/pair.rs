@@ -11,9 +11,8 @@ use super::noise::{IdleNoise, IdleSpectra};
 use super::recording::Treatment;
 use super::segments::{self, Passing, block_frames};
 use crate::align::{Alignment, Finder, Follower, Search, Side};
-use crate::design::{Design, response};
+use crate::design::Design;
 use crate::evidence::{self, BandFigures, Deviation, Measured, Pairing};
-use crate::section::Section;
 use crate::spectrum::{SegmentPlan, Spectra};
 use crate::wave::{Header, InputFigures, RateMeaning, Reader};
 pub use error::PairError;
@@ -26,8 +25,8 @@ use std::sync::Arc;
 pub struct PairTask {
     /// Bands, settling time and transforms; nothing is filtered.
     pub treatment: Treatment,
-    /// What the spec's stages come to; empty where it has none.
-    pub sections: Vec<Section>,
+    /// What the spec's stages come to; `None` where it has none.
+    pub filter: Option<Arc<Design>>,
     /// Place among the bands of the one whose gain counts as 0 dB.
     pub reference: Option<usize>,
     /// Largest delay to look for, seconds.
@@ -68,7 +67,7 @@ impl PairTask {
         let named = |name: &String| treatment.bands.iter().position(|band| band.name == *name);
         PairTask {
             reference: spec.reference_band.as_ref().and_then(named),
-            sections: design.sections.clone(),
+            filter: (!design.sections.is_empty()).then(|| Arc::new(design.clone())),
             treatment,
             max_delay_s: DEFAULT_MAX_DELAY_S,
             delay_frames: None,
@@ -302,8 +301,8 @@ fn judge(pair: &mut PairMeasured, seen: &Seen, task: &PairTask) -> Result<(), Pa
             measured.gain = evidence::reference_gain(&measured, band).ok_or_else(none)?;
             pair.reference_gains.get_or_insert_default().push(measured.gain);
         }
-        if !task.sections.is_empty() {
-            let shown = |hz: f64| response::at(&task.sections, hz, f64::from(seen.rate_hz));
+        if let Some(filter) = &task.filter {
+            let shown = |hz: f64| filter.response_at(hz);
             let farthest = evidence::deviation(&measured, bands, &shown);
             let farther =
                 |one: &Deviation, other: &Deviation| one.beyond_chance_db().total_cmp(&other.beyond_chance_db());
@@ -345,7 +344,8 @@ impl Passage {
         let frames = overlap.end - overlap.start;
         let plan = treatment
             .segment_frames(rate_hz, frames)
-            .map(|length| SegmentPlan::spread(length, treatment.settling_frames..frames));
+            .zip(treatment.settled(frames))
+            .map(|(length, settled)| SegmentPlan::spread(length, settled));
         let bytes = [frame_bytes(before.header()), frame_bytes(after.header())];
         let mut sides = Sides {
             before,

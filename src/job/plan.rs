@@ -8,7 +8,8 @@ use super::recording::Treatment;
 use super::witness::{Witness, witness};
 use super::{FilterJob, Interrupted, JobError, Progress, paths};
 use crate::cascade::Cascade;
-use crate::design::{Design, design};
+use crate::cascade::both_ways::{RING_FALL_DB, Reach};
+use crate::design::{Design, auto, design, settling};
 use crate::evidence::BandTask;
 use crate::files::open;
 use crate::files::place::{Stamp, real, same_file};
@@ -18,7 +19,7 @@ use crate::spec::{Dither, OutputEncoding, RateMeaning, Spec, SpecFile};
 use crate::spectrum::TransformCache;
 use crate::wave::{Encoding, Header, History, RIFF_LIMIT_BYTES, Reader, SampleFormat};
 use rayon::prelude::*;
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 use std::path::{Path, PathBuf};
 use std::sync::Arc;
 
@@ -36,8 +37,11 @@ pub struct Plan {
     pub dot_underscore: u64,
     /// Files that are no recordings.
     pub other_files: u64,
-    /// Which sample rate the spec's frequencies mean in time-expanded recordings.
-    pub rate: Option<RateMeaning>,
+    /// The spec in force: where the cascade is to be found from the bands, with the stages
+    /// found for the sample rates of this run.
+    pub spec: SpecFile,
+    /// What was found, where it was.
+    pub found_stages: Option<auto::Found>,
     /// What is done at each sample rate.
     pub rates: BTreeMap<u32, RatePlan>,
     /// Where the report goes.
@@ -109,9 +113,9 @@ impl Plan {
             return Err(JobError::NoRecordings { path: job.input.clone(), found: found_instead(&discovered) });
         }
         outside_input(&job.input, &job.output)?;
-        let spec = &job.spec.spec;
+        let rate = job.spec.spec.rate;
         let mut recordings: Vec<Planned> =
-            discovered.recordings.into_par_iter().map(|found| Planned::new(found, &job.output, spec.rate)).collect();
+            discovered.recordings.into_par_iter().map(|found| Planned::new(found, &job.output, rate)).collect();
         let unreadable: Vec<(String, String)> =
             discovered.unreadable.into_iter().map(|(path, why)| (paths::shown(&path).0, why)).collect();
         let report = job.report.clone().unwrap_or_else(|| job.output.join(REPORT_FILE_NAME));
@@ -126,14 +130,16 @@ impl Plan {
         let listed = |shown: &str, escaped: bool| {
             position(&recordings, shown, escaped).is_some() || unreadable.iter().any(|(path, _)| path == shown)
         };
-        let earlier = Earlier::read(job, &report, &listed)
+        let headers = recordings.iter().filter_map(|planned| planned.header.as_ref().ok());
+        let (spec, found_stages) = in_force(&job.spec, headers.map(|brief| brief.rate_hz), progress)?;
+        let earlier = Earlier::read(job, &spec, &report, &listed)
             .map_err(|cause| JobError::Earlier { path: job.output.join(super::journal::JOURNAL_NAME), cause })?;
         if let Some(recording) = earlier.stranger().filter(|_| !job.replace) {
             let path = job.output.join(super::journal::JOURNAL_NAME);
             return Err(JobError::OtherJournal { path, recording: recording.into() });
         }
         let ours = refuse_to_overwrite(job, &recordings, &report, &earlier)?;
-        let rates = plan_rates(&job.spec, &recordings, progress)?;
+        let rates = plan_rates(&spec, &recordings, progress)?;
         if !earlier.is_empty() {
             verify(&mut recordings, &earlier, progress)?;
             refuse_changed(job.replace, &recordings)?;
@@ -143,7 +149,8 @@ impl Plan {
             unreadable,
             dot_underscore: discovered.dot_underscore,
             other_files: discovered.other_files,
-            rate: spec.rate,
+            spec,
+            found_stages,
             rates,
             report,
             earlier,
@@ -312,6 +319,25 @@ fn outside_input(input: &Path, output: &Path) -> Result<(), JobError> {
     Ok(())
 }
 
+/// The spec with the stages that are found for `rates_hz` where it leaves them to the program,
+/// and what was found; as it is where there is no rate.
+pub(super) fn in_force(
+    spec: &SpecFile,
+    rates_hz: impl Iterator<Item = u32>,
+    progress: &dyn Progress,
+) -> Result<(SpecFile, Option<auto::Found>), JobError> {
+    let Some(asked) = spec.spec.auto else { return Ok((spec.clone(), None)) };
+    let rates_hz: BTreeSet<u32> = rates_hz.collect();
+    let rates_hz: Vec<u32> = rates_hz.into_iter().collect();
+    if rates_hz.is_empty() {
+        // Not one recording can be read: each has its own reason to fail, and nothing is filtered.
+        return Ok((spec.clone(), None));
+    }
+    progress.finding();
+    let found = auto::find(&spec.spec, asked, &rates_hz).map_err(JobError::Auto)?;
+    Ok((SpecFile { spec: found.spec.clone(), file_sha256: spec.file_sha256.clone() }, Some(found)))
+}
+
 fn plan_rates(
     spec: &SpecFile,
     recordings: &[Planned],
@@ -327,7 +353,8 @@ fn plan_rates(
         .par_iter()
         .map(|(&rate_hz, &recording)| {
             go_on(progress)?;
-            design(&spec.spec, rate_hz).map_err(|cause| JobError::Design { recording: recording.into(), cause })
+            design(&spec.spec, rate_hz)
+                .map_err(|cause| JobError::Design { recording: recording.into(), cause: cause.into() })
         })
         .collect::<Result<_, _>>()?;
     let impossible: Vec<String> = designs.iter().flat_map(Design::impossible).collect();
@@ -347,7 +374,7 @@ fn go_on(progress: &dyn Progress) -> Result<(), Interrupted> {
 
 impl RatePlan {
     fn new(spec: &SpecFile, design: Design) -> Result<Self, JobError> {
-        let history = history(&spec.spec, env!("CARGO_PKG_VERSION"), &spec.file_sha256);
+        let history = history(&spec.spec, &design, env!("CARGO_PKG_VERSION"), &spec.file_sha256);
         let treatment = Treatment { history, ..treatment(&spec.spec, &design) };
         let rate_hz = design.rate_hz;
         let witness = witness(&design, &treatment).map_err(|cause| JobError::NoWitness { rate_hz, cause })?;
@@ -365,9 +392,10 @@ impl RatePlan {
 
 /// What version `version` of this program appends to each recording's own metadata, if the
 /// spec, whose file has the hash `spec_sha256`, asks for it.
-pub fn history(spec: &Spec, version: &str, spec_sha256: &str) -> Option<History> {
+pub fn history(spec: &Spec, design: &Design, version: &str, spec_sha256: &str) -> Option<History> {
     let tool = format!("{} {version}", env!("CARGO_PKG_NAME"));
-    spec.output.history.then(|| History { tool, spec_sha256: spec_sha256.to_owned() })
+    let both_ways = design.passes > 1;
+    spec.output.history.then(|| History { tool, both_ways, spec_sha256: spec_sha256.to_owned() })
 }
 
 /// What a design and the spec's `[output]` come to for each recording of its rate, but for
@@ -391,6 +419,10 @@ pub fn treatment(spec: &Spec, design: &Design) -> Treatment {
     });
     Treatment {
         cascade: Arc::new(Cascade::new(&design.sections)),
+        both_ways: (design.passes > 1).then(|| {
+            let ring_frames = settling::settling_frames(&design.sections, RING_FALL_DB);
+            Reach::new(usize::try_from(ring_frames).unwrap_or(usize::MAX))
+        }),
         identity: spec.is_identity(),
         settling_frames: design.settling_frames,
         bands: bands.collect(),

@@ -6,23 +6,28 @@
 use super::collector::Collector;
 use super::segments::{self, Passing, block_frames};
 use super::{Interrupted, Pass};
-use crate::cascade::{Cascade, Filter};
+use crate::cascade::Cascade;
+use crate::cascade::both_ways::{Passes, Reach};
 use crate::evidence::{self, BandFigures, BandTask, Measured};
 use crate::output::{Output, OutputFigures, OutputPlan};
 use crate::spec::{Overload, Requirement};
 use crate::spectrum::{SegmentPlan, Spectra, TransformCache, segment_frames};
 use crate::wave::{Changes, Header, History, InputFigures, Reader, SampleFormat, WaveError, Writer, WrittenFigures};
 use std::io::{self, Read, Seek, SeekFrom, Write};
+use std::ops::Range;
 use std::sync::Arc;
 
 /// What is done to the recordings of one sample rate.
 #[derive(Clone, Debug)]
 pub struct Treatment {
-    /// The filter.
+    /// One pass of the filter.
     pub cascade: Arc<Cascade>,
+    /// There where it runs forward and backward.
+    pub both_ways: Option<Reach>,
     /// Nothing is done to the samples: they pass bit for bit.
     pub identity: bool,
-    /// Frames at the start that figures leave out.
+    /// Frames at the start that figures leave out; where the filter runs both ways, as many
+    /// at the end. See [`Treatment::settled`].
     pub settling_frames: u64,
     /// Bands to be judged.
     pub bands: Vec<BandTask>,
@@ -178,12 +183,13 @@ fn run<R: Read + Seek + Send, W: Write + Send>(
     let mut stream = Stream {
         writer: Writer::begin(sink, input, &changes)?,
         input,
-        filter: Filter::new(Arc::clone(&treatment.cascade), channels),
+        filter: Passes::new(&treatment.cascade, treatment.both_ways, channels, header.frames),
         output: Output::new(OutputPlan { format, dither: treatment.dither, gain, identity: unchanged }, channels),
         before: vec![Vec::new(); channels],
         after: vec![Vec::new(); channels],
         frame_bytes: header.data_bytes / header.frames.max(1),
         pass,
+        all_read: false,
         ended: false,
     };
     let spectra = match &plan {
@@ -215,23 +221,30 @@ fn run<R: Read + Seek + Send, W: Write + Send>(
 /// than the shortest segment.
 fn plan_segments(header: &Header, treatment: &Treatment) -> Option<SegmentPlan> {
     let length = treatment.segment_frames(header.rate_hz, header.frames)?;
-    Some(SegmentPlan::spread(length, treatment.settling_frames..header.frames))
+    Some(SegmentPlan::spread(length, treatment.settled(header.frames)?))
 }
 
 impl Treatment {
+    /// The frames of a recording that figures speak of; `None` where none are left.
+    pub fn settled(&self, frames: u64) -> Option<Range<u64>> {
+        let at_end = if self.both_ways.is_some() { self.settling_frames } else { 0 };
+        let settled = self.settling_frames..frames.saturating_sub(at_end);
+        (!settled.is_empty()).then_some(settled)
+    }
+
     /// Length of the segments for a recording; `None` where nothing is measured.
     ///
     /// The narrowest band decides (of those with a requirement, if any has one). Gains
     /// also need segments at least as long as the filter rings: what it delays out of a
     /// segment is missing there.
     pub fn segment_frames(&self, rate_hz: u32, frames: u64) -> Option<usize> {
-        let settled = frames.checked_sub(self.settling_frames).filter(|&settled| settled > 0)?;
+        let settled = self.settled(frames)?;
         let width = |band: &BandTask| band.to_hz - band.from_hz;
         let judged = self.bands.iter().filter(|band| band.requirement != Requirement::Observe).map(width);
         let narrowest = judged.reduce(f64::min).or(self.bands.iter().map(width).reduce(f64::min))?;
         let rings = self.settling_frames > 0 && self.bands.iter().any(|band| evidence::shows_gains(&band.requirement));
         let ringing_hz = if rings { 10.0 * f64::from(rate_hz) / self.settling_frames as f64 } else { f64::INFINITY };
-        segment_frames(rate_hz, Some(narrowest.min(ringing_hz)), settled)
+        segment_frames(rate_hz, Some(narrowest.min(ringing_hz)), settled.end - settled.start)
     }
 }
 
@@ -268,28 +281,31 @@ fn judge(
 struct Stream<'a, R, W> {
     input: &'a mut Reader<R>,
     writer: Writer<W>,
-    filter: Filter,
+    filter: Passes,
     output: Output,
     before: Vec<Vec<f64>>,
     after: Vec<Vec<f64>>,
     frame_bytes: u64,
     pass: &'a Pass<'a>,
+    all_read: bool,
     ended: bool,
 }
 
 impl<R: Read + Seek + Send, W: Write + Send> Passing for Stream<'_, R, W> {
     type Error = RecordingError;
 
-    /// One block: read, filter, shape, write.
+    /// One block: read, filter, shape, write. After the last one read, what the filter
+    /// still holds, block by block.
     fn step(&mut self, collector: Option<&mut Collector>) -> Result<(), RecordingError> {
         self.before.iter_mut().for_each(Vec::clear);
         self.after.iter_mut().for_each(Vec::clear);
-        let frames = self.input.read(block_frames(self.before.len()), &mut self.before)?;
+        let block = block_frames(self.before.len());
+        let frames = if self.all_read { 0 } else { self.input.read(block, &mut self.before)? };
         if frames > 0 {
             self.filter.process(&self.before, &mut self.after);
         } else {
-            self.filter.finish(&mut self.after);
-            self.ended = true;
+            self.all_read = true;
+            self.ended = self.filter.finish(block, &mut self.after);
         }
         self.output.shape(&mut self.after);
         self.writer.write(&self.after)?;

@@ -48,7 +48,7 @@ fn scan_one(plan: &Plan, planned: &Planned, progress: &dyn Progress) -> Result<O
     let brief = planned.usable().map_err(|why| Failure::Header(why.to_owned()))?;
     let Some(rate) = plan.rates.get(&brief.rate_hz) else { return Ok(None) };
     let file = open::regular(&planned.found.path).map_err(Failure::Open)?;
-    let reader = Reader::open_as(file, plan.rate)?;
+    let reader = Reader::open_as(file, plan.spec.spec.rate)?;
     let mut treatment = rate.treatment.clone();
     treatment.bands.clear();
     let (_, processed) = process(reader, Nowhere::default(), &treatment, &|bytes| progress.pass(bytes))?;

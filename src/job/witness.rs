@@ -5,8 +5,9 @@
 //! of the designed transfer function, whatever the recordings contain.
 
 use super::recording::{RecordingError, Treatment, process};
+use crate::cascade::both_ways::Reach;
 use crate::design::check::CAP_DB;
-use crate::design::{BandDesign, Design, response, settling};
+use crate::design::{BandDesign, Design, settling};
 use crate::spec::Overload;
 use crate::wave::{Encoding, Reader, SampleFormat};
 use num_complex::Complex64;
@@ -14,7 +15,7 @@ use rayon::prelude::*;
 use rustfft::FftPlanner;
 use std::io::Cursor;
 
-/// The impulse stands at frame 1: the start state belongs to frame 0.
+/// In one pass the impulse stands at frame 1: the start state belongs to frame 0.
 const IMPULSE_FRAME: usize = 1;
 /// Largest complex deviation allowed at any frequency, full scale 1. Rounding
 /// inside a correct f64 cascade reaches 1e-8 (1 Hz notch at 384 kHz).
@@ -29,6 +30,8 @@ const TAIL_FALL_DB: f64 = 220.0;
 /// Bins asked for in the narrowest band, and the length at which that stops.
 const BINS_PER_BAND: f64 = 4.0;
 const LONGEST_FOR_BANDS: f64 = 16_777_216.0;
+/// Longest impulse recording that is made for the sake of two blocks of the backward pass.
+const LONGEST_FOR_BLOCKS: u64 = 1 << 24;
 const SHORTEST: u64 = 4096;
 /// Longest impulse recording: 3 GB of working memory. Beyond it [`settling`] does not
 /// follow the tail frame by frame either.
@@ -52,12 +55,21 @@ pub struct Witness {
 
 /// Sends the impulse through `treatment`'s cascade and compares.
 pub fn witness(design: &Design, treatment: &Treatment) -> Result<Witness, RecordingError> {
-    let samples = respond(design, treatment)?;
-    Ok(compare(&samples, design))
+    Ok(compare(&respond(design, treatment)?, design))
 }
 
-/// The impulse recording's samples after the cascade: float64, from frame 0 on.
-pub fn respond(design: &Design, treatment: &Treatment) -> Result<Vec<f64>, RecordingError> {
+/// The impulse recording after the cascade.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Response {
+    /// Its samples from frame 0 on, as float64 holds them.
+    pub samples: Vec<f64>,
+    /// Where the impulse stood.
+    pub impulse_frame: usize,
+}
+
+/// Sends the impulse recording through `treatment`'s cascade.
+pub fn respond(design: &Design, treatment: &Treatment) -> Result<Response, RecordingError> {
+    let layout = Layout::new(design, treatment.both_ways)?;
     let treatment = Treatment {
         identity: false,
         bands: Vec::new(),
@@ -68,26 +80,51 @@ pub fn respond(design: &Design, treatment: &Treatment) -> Result<Vec<f64>, Recor
         gain_db: 0.0,
         ..treatment.clone()
     };
-    let recording = impulse_recording(design.rate_hz, frames(design)?)?;
+    let recording = impulse_recording(design.rate_hz, layout)?;
     let reader = Reader::open(Cursor::new(recording))?;
     let (written, _) = process(reader, Cursor::new(Vec::new()), &treatment, &|_| Ok(()))?;
     let mut reader = Reader::open(Cursor::new(written.into_inner()))?;
     let mut planes = vec![Vec::new()];
     while reader.read(1 << 20, &mut planes)? > 0 {}
-    Ok(planes.swap_remove(0))
+    Ok(Response { samples: planes.swap_remove(0), impulse_frame: layout.impulse_frame })
 }
 
-/// Frames of the impulse recording: until the tail has fallen into rounding, and
-/// enough for the narrowest band to hold some bins.
-fn frames(design: &Design) -> Result<usize, RecordingError> {
-    let rate_hz = f64::from(design.rate_hz);
-    let narrowest_hz = design.bands.iter().map(|band| band.band.line.to_hz - band.band.line.from_hz).reduce(f64::min);
-    let for_bands = narrowest_hz.map_or(0.0, |width_hz| (BINS_PER_BAND * rate_hz / width_hz).min(LONGEST_FOR_BANDS));
-    let tail = settling::settling_frames(&design.sections, TAIL_FALL_DB);
-    let least = tail.max(SHORTEST).max(for_bands as u64).saturating_add(IMPULSE_FRAME as u64);
-    match usize::try_from(least) {
-        Ok(frames) if least <= LONGEST => Ok(smooth_at_least(frames)),
-        _ => Err(RecordingError::RingsTooLong { seconds: least as f64 / rate_hz, longest_s: LONGEST as f64 / rate_hz }),
+/// The impulse recording: how long it is, and where the impulse stands.
+#[derive(Clone, Copy, Debug)]
+struct Layout {
+    frames: usize,
+    impulse_frame: usize,
+}
+
+impl Layout {
+    /// Long enough for the response to fall into rounding, and for the narrowest band to hold
+    /// some bins. With two passes it does so on both sides of the impulse, which stands,
+    /// where that does not take too long a recording, at the first frame of the backward
+    /// pass' second block: half of what it leaves before it is the first block's.
+    fn new(design: &Design, both_ways: Option<Reach>) -> Result<Self, RecordingError> {
+        let rate_hz = f64::from(design.rate_hz);
+        let widths = design.bands.iter().map(|band| band.band.line.to_hz - band.band.line.from_hz);
+        let for_bands =
+            widths.reduce(f64::min).map_or(0.0, |width_hz| (BINS_PER_BAND * rate_hz / width_hz).min(LONGEST_FOR_BANDS));
+        let (before, after) = match both_ways {
+            None => (IMPULSE_FRAME as u64, settling::settling_frames(&design.sections, TAIL_FALL_DB)),
+            Some(reach) => {
+                let tail = settling::settling_frames_both_ways(&design.sections, TAIL_FALL_DB);
+                let (block, ring) = (reach.block_frames as u64, reach.ring_frames as u64);
+                let in_blocks = tail <= block && block.saturating_add(ring.max(tail)) < LONGEST_FOR_BLOCKS;
+                if in_blocks { (block, ring.max(tail)) } else { (tail, tail) }
+            }
+        };
+        let least = before.saturating_add(after.max(SHORTEST).saturating_add(1)).max(for_bands as u64);
+        match (usize::try_from(least), usize::try_from(before)) {
+            (Ok(frames), Ok(impulse_frame)) if least <= LONGEST => {
+                Ok(Layout { frames: smooth_at_least(frames), impulse_frame })
+            }
+            _ => Err(RecordingError::RingsTooLong {
+                seconds: least as f64 / rate_hz,
+                longest_s: LONGEST as f64 / rate_hz,
+            }),
+        }
     }
 }
 
@@ -97,18 +134,18 @@ fn smooth_at_least(least: usize) -> usize {
     if power / 4 * 3 >= least { power / 4 * 3 } else { power }
 }
 
-fn impulse_recording(rate_hz: u32, frames: usize) -> Result<Vec<u8>, RecordingError> {
+fn impulse_recording(rate_hz: u32, layout: Layout) -> Result<Vec<u8>, RecordingError> {
     let spec = hound::WavSpec {
         channels: 1,
         sample_rate: rate_hz,
         bits_per_sample: 32,
         sample_format: hound::SampleFormat::Float,
     };
-    let mut bytes = Cursor::new(Vec::with_capacity(frames * 4 + 128));
+    let mut bytes = Cursor::new(Vec::with_capacity(layout.frames * 4 + 128));
     let write = |bytes: &mut Cursor<Vec<u8>>| -> hound::Result<()> {
         let mut writer = hound::WavWriter::new(bytes, spec)?;
-        for frame in 0..frames {
-            writer.write_sample(if frame == IMPULSE_FRAME { 1.0f32 } else { 0.0 })?;
+        for frame in 0..layout.frames {
+            writer.write_sample(if frame == layout.impulse_frame { 1.0f32 } else { 0.0 })?;
         }
         writer.finalize()
     };
@@ -116,17 +153,18 @@ fn impulse_recording(rate_hz: u32, frames: usize) -> Result<Vec<u8>, RecordingEr
     Ok(bytes.into_inner())
 }
 
-/// Holds the spectrum of an impulse response (the impulse at frame 1) against the
-/// design's exact response.
-pub fn compare(samples: &[f64], design: &Design) -> Witness {
+/// Holds the spectrum of an impulse response against the design's exact response.
+pub fn compare(response: &Response, design: &Design) -> Witness {
+    let samples = response.samples.as_slice();
     let length = samples.len();
     let rate_hz = f64::from(design.rate_hz);
     let mut spectrum: Vec<Complex64> = samples.iter().map(|&sample| Complex64::new(sample, 0.0)).collect();
     FftPlanner::new().plan_fft_forward(length).process(&mut spectrum);
     let bin_hz = rate_hz / length as f64;
     let exact = |bin: usize| {
-        let turn = -std::f64::consts::TAU * ((bin * IMPULSE_FRAME) % length) as f64 / length as f64;
-        response::at(&design.sections, bin as f64 * bin_hz, rate_hz) * Complex64::new(libm::cos(turn), libm::sin(turn))
+        let turned = (bin as u64 * response.impulse_frame as u64) % length as u64;
+        let turn = -std::f64::consts::TAU * turned as f64 / length as f64;
+        design.response_at(bin as f64 * bin_hz) * Complex64::new(libm::cos(turn), libm::sin(turn))
     };
     let worst = (0..=length / 2)
         .into_par_iter()
@@ -226,9 +264,9 @@ mod tests {
     /// 25.3 nepers: at 48 kHz 2^26 frames are reached at a width of 0.0058 Hz.
     #[test]
     fn a_filter_that_rings_for_hours_is_refused_before_memory_is_asked_for() {
-        assert!(frames(&notch(0.01)).unwrap() as u64 <= LONGEST);
+        assert!(Layout::new(&notch(0.01), None).unwrap().frames as u64 <= LONGEST);
         for width_hz in [0.005, 1e-5, 1e-7] {
-            let refused = frames(&notch(width_hz));
+            let refused = Layout::new(&notch(width_hz), None);
             assert!(matches!(refused, Err(RecordingError::RingsTooLong { .. })), "{width_hz} Hz: {refused:?}");
         }
     }

@@ -44,7 +44,8 @@ impl Rates {
                         |told| difference(told, &found, dither),
                     );
                     // What the program appended that wrote the report, whichever version this is.
-                    let history = history(&rates.spec, &listing.head.tool_version, &listing.head.spec.file_sha256);
+                    let history =
+                        history(&rates.spec, &found, &listing.head.tool_version, &listing.head.spec.file_sha256);
                     let treatment = Treatment { history, ..treatment(&rates.spec, &found) };
                     rates.treatments.insert(rate_hz, treatment);
                     if listing.command == Command::Measure {
@@ -73,6 +74,12 @@ fn difference(told: &DesignEntry, found: &Design, dither: &str) -> Option<String
         return Some(format!(
             "{name} of section {place} of {} is {then:?} in the report, and its spec comes to {now:?} here: {WHY}",
             told.sections.len()
+        ));
+    }
+    if told.passes != found.passes {
+        return Some(format!(
+            "passes is {} in the report, and its spec comes to {} here: {WHY}",
+            told.passes, found.passes
         ));
     }
     (told.dither != dither)

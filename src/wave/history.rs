@@ -22,8 +22,17 @@ use super::{Changes, Encoding, Header, SampleFormat, guano};
 pub struct History {
     /// Name and version of the program.
     pub tool: String,
+    /// Whether it filtered forward and backward.
+    pub both_ways: bool,
     /// SHA-256 of the spec file, lower-case hexadecimal.
     pub spec_sha256: String,
+}
+
+impl History {
+    /// Without commas, which end a text of coding history.
+    fn done(&self) -> &'static str {
+        if self.both_ways { "filtered forward and backward (two passes; zero phase) by" } else { "filtered by" }
+    }
 }
 
 /// What becomes of the input's chunks.
@@ -176,9 +185,10 @@ fn coding_history(history: &History, header: &Header, format: SampleFormat) -> S
         _ => "",
     };
     format!(
-        "A=PCM,F={},W={},{mode}T={coding}{channels}filtered by {}; spec SHA-256 {}",
+        "A=PCM,F={},W={},{mode}T={coding}{channels}{} {}; spec SHA-256 {}",
         header.header_rate_hz,
         format.valid_bits,
+        history.done(),
         plain(&history.tool),
         plain(&history.spec_sha256)
     )
@@ -193,5 +203,6 @@ fn guano_field(history: &History, text: &[u8]) -> String {
     };
     let last = guano::fields(text).filter_map(|(key, _)| number(key)).max().unwrap_or(0);
     let number = if last > 0 { format!(" {}", last + 1) } else { String::new() };
-    format!("{GUANO_KEY}{number}: filtered by {}; spec SHA-256 {}", plain(&history.tool), plain(&history.spec_sha256))
+    let (tool, spec_sha256) = (plain(&history.tool), plain(&history.spec_sha256));
+    format!("{GUANO_KEY}{number}: {} {tool}; spec SHA-256 {spec_sha256}", history.done())
 }

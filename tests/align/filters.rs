@@ -6,14 +6,14 @@ use bandproof::align::Alignment;
 use bandproof::cascade::{Cascade, Filter};
 use bandproof::design::{PlacedStage, sections};
 use bandproof::section::Section;
-use bandproof::spec::{Family, FilterKind, FilterStage, NotchStage, Placement, Row, Stage, Width};
+use bandproof::spec::{Family, FilterKind, FilterStage, NotchStage, Order, Placement, Row, Stage, Width};
 use std::sync::Arc;
 
 fn stage(kind: FilterKind, order: u32, edge_hz: f64) -> Vec<Section> {
     let stage = Stage::Filter(FilterStage {
         kind,
         family: Family::Butterworth,
-        order,
+        order: Order::Given(order),
         placement: Placement::Edge { edge_hz },
         ripple_db: None,
         stop_db: None,
@@ -99,7 +99,7 @@ fn bandpass(order: u32, from_hz: f64, to_hz: f64) -> Vec<Section> {
     let stage = Stage::Filter(FilterStage {
         kind: FilterKind::Bandpass,
         family: Family::Butterworth,
-        order,
+        order: Order::Given(order),
         placement: Placement::Edges { edges_hz: [from_hz, to_hz] },
         ripple_db: None,
         stop_db: None,

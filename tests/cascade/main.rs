@@ -6,11 +6,13 @@
 // Clippy allows these in `#[test]` functions only; here all is test.
 #![allow(clippy::expect_used)]
 
+mod both_ways;
 mod helpers;
 mod laws;
 mod response;
 mod rounding;
 mod scipy;
+mod scipy_both_ways;
 mod silence;
 mod start;
 mod widths;

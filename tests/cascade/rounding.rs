@@ -24,12 +24,26 @@ pub enum Errors {
 /// path's impulse response. An error uniform within its bound has a third of the
 /// bound's square as power.
 pub fn bound(sections: &[Section], input: &[f64], errors: Errors) -> f64 {
+    bound_before(sections, &[], input, errors)
+}
+
+/// How far rounding can carry the output of `sections` run forward and backward from the
+/// exact one, errors independent; `forward` is what the second pass runs over. The second
+/// pass passes on the power of the first one's errors as it would in the other direction.
+pub fn bound_both_ways(sections: &[Section], input: &[f64], forward: &[f64]) -> f64 {
+    let first = bound_before(sections, sections, input, Errors::Independent);
+    libm::hypot(first, bound(sections, forward, Errors::Independent))
+}
+
+/// [`bound`] of what `sections` do where `after` comes after them.
+fn bound_before(sections: &[Section], after: &[Section], input: &[f64], errors: Errors) -> f64 {
     let mut samples = input.to_vec();
     let mut total = 0.0;
     for (index, section) in sections.iter().enumerate() {
         let output = plain::filter(std::slice::from_ref(section), &samples);
         let feedback = Section { b: [1.0, 0.0, 0.0], a: section.a };
-        let path: Vec<Section> = [feedback].into_iter().chain(sections[index + 1..].iter().copied()).collect();
+        let rest = sections[index + 1..].iter().chain(after).copied();
+        let path: Vec<Section> = [feedback].into_iter().chain(rest).collect();
         let response = plain::filter(&path, &impulse(input.len().max(2)));
         let results = (2..samples.len()).map(|n| results(section, &samples[n - 2..=n], &output[n - 2..=n]));
         total += match errors {

@@ -64,7 +64,7 @@ pub fn placed(bands: &[Band]) -> Placed {
 
 /// The design check of `bands` with nothing for settling.
 pub fn checked(bands: &[Band], sections: &[Section], rate_hz: f64) -> Vec<BandDesign> {
-    check(&placed(bands), sections, rate_hz, 0.0)
+    check(&placed(bands), sections, 1, rate_hz, 0.0)
 }
 
 /// The difference equation of `Section`, section by section, from rest.

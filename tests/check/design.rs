@@ -3,8 +3,8 @@
 use crate::common::{band, close, keep, reduce};
 use bandproof::design::{Check, DesignError, design};
 use bandproof::spec::{
-    Band, BeyondHalfRate, Dither, Extent, Family, FilterKind, FilterStage, NotchStage, OutputEncoding, OutputSpec,
-    Overload, Placement, Requirement, Row, Spec, Stage, Width,
+    Band, BeyondHalfRate, Dither, Extent, Family, FilterKind, FilterStage, NotchStage, Order, OutputEncoding,
+    OutputSpec, Overload, Phase, Placement, Requirement, Row, Spec, Stage, Width,
 };
 
 const OUTPUT: OutputSpec = OutputSpec {
@@ -20,7 +20,7 @@ fn pumping_station() -> Spec {
     let highpass = FilterStage {
         kind: FilterKind::Highpass,
         family: Family::Butterworth,
-        order: 4,
+        order: Order::Given(4),
         placement: Placement::Edge { edge_hz: 40.0 },
         ripple_db: None,
         stop_db: None,
@@ -29,13 +29,15 @@ fn pumping_station() -> Spec {
     let stops = FilterStage {
         kind: FilterKind::Bandstop,
         family: Family::Elliptic,
-        order: 3,
+        order: Order::Given(3),
         placement: Placement::Row(row(3.2)),
         ripple_db: Some(0.1),
         stop_db: Some(40.0),
     };
     let notch = NotchStage { row: Row { center_hz: 15_800.0, width: Width::Q(60.0), harmonics: 1 } };
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         reference_band: None,
         rate: None,
         title: None,
@@ -107,6 +109,8 @@ fn without_a_reduction_the_tail_has_to_fall_by_60_db() {
 fn a_spec_without_stages_is_the_identity() {
     let bands = vec![band("all", 0.0, 4_000.0, keep(0.1, &[])), band("hum", 49.0, 51.0, reduce(20.0))];
     let spec = Spec {
+        phase: Phase::Causal,
+        auto: None,
         reference_band: None,
         rate: None,
         title: None,
@@ -137,9 +141,11 @@ fn one_stage(kind: FilterKind, family: Family, order: u32, band: Band) -> Spec {
     };
     let ripple_db = matches!(family, Family::Chebyshev1 | Family::Elliptic).then_some(0.25);
     let stop_db = matches!(family, Family::Chebyshev2 | Family::Elliptic).then_some(40.0);
-    let stage = FilterStage { kind, family, order, placement, ripple_db, stop_db };
+    let stage = FilterStage { kind, family, order: Order::Given(order), placement, ripple_db, stop_db };
     let (stages, bands) = (vec![Stage::Filter(stage)], vec![band]);
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         rate: None,
         reference_band: None,
         title: None,

@@ -4,8 +4,9 @@ use crate::common::{band, reduce};
 use bandproof::design::DesignError;
 use bandproof::design::placement::{Placed, place};
 use bandproof::spec::{
-    Band, BeyondHalfRate, Dither, Extent, Family, FilterKind, FilterStage, NotchStage, OutputEncoding, OutputSpec,
-    Overload, Placement, Requirement, Row, Spec, Stage, Width,
+    AnalogStage, Band, BeyondHalfRate, Coefficient, Dither, Extent, Family, FilterKind, FilterStage, NotchStage, Order,
+    OutputEncoding, OutputSpec, Overload, Phase, Placement, Requirement, Root, RootUnit, Row, Spec, Stage, StopEdges,
+    Transfer, Width,
 };
 
 fn spec(stages: Vec<Stage>, bands: Vec<Band>, beyond_half_rate: BeyondHalfRate) -> Spec {
@@ -16,14 +17,24 @@ fn spec(stages: Vec<Stage>, bands: Vec<Band>, beyond_half_rate: BeyondHalfRate) 
         gain_db: 0.0,
         history: false,
     };
-    Spec { reference_band: None, rate: None, title: None, beyond_half_rate, output, stages, bands }
+    Spec {
+        phase: Phase::Causal,
+        auto: None,
+        reference_band: None,
+        rate: None,
+        title: None,
+        beyond_half_rate,
+        output,
+        stages,
+        bands,
+    }
 }
 
 fn filter(kind: FilterKind, placement: Placement) -> Stage {
     Stage::Filter(FilterStage {
         kind,
         family: Family::Butterworth,
-        order: 2,
+        order: Order::Given(2),
         placement,
         ripple_db: None,
         stop_db: None,
@@ -60,6 +71,32 @@ fn a_stage_fits_while_its_upper_edge_is_below_half_the_rate() {
     }
     let notch = Stage::Notch(NotchStage { row: row(11_900.0, 200.0, 1) });
     assert!(!fits(&notch, 24_000) && fits(&notch, 24_001));
+}
+
+/// Above half the rate there is no stop band that an order could follow from.
+#[test]
+fn a_stage_with_limits_fits_while_its_stop_edges_are_below_half_the_rate_too() {
+    let limited = |kind, placement, stop| {
+        let Stage::Filter(plain) = filter(kind, placement) else { panic!("a filter") };
+        let (ripple_db, stop_db) = (Some(0.5), Some(40.0));
+        Stage::Filter(FilterStage { order: Order::Limits(stop), ripple_db, stop_db, ..plain })
+    };
+    let low = limited(FilterKind::Lowpass, Placement::Edge { edge_hz: 9_000.0 }, StopEdges::One(12_000.0));
+    let two = StopEdges::Two([50.0, 12_000.0]);
+    let pass = limited(FilterKind::Bandpass, Placement::Edges { edges_hz: [100.0, 9_000.0] }, two);
+    for (stage, edge) in [(&low, "stop edge"), (&pass, "upper stop edge")] {
+        assert!(!fits(stage, 24_000) && fits(stage, 24_001), "{stage:?}");
+        let placed = place(&spec(vec![stage.clone()], Vec::new(), BeyondHalfRate::LeaveOut), 24_000).unwrap();
+        assert!(placed.stages.is_empty());
+        let reason = format!("its {edge}, 12000 Hz, is not below half the sample rate, 12000 Hz");
+        assert_eq!(placed.left_out[0].reason, reason);
+        // Where both edges are too high the one that comes first is named.
+        let reason = place(&spec(vec![stage.clone()], Vec::new(), BeyondHalfRate::Error), 16_000).unwrap_err();
+        assert!(reason.to_string().contains("edge, 9000 Hz, is not below"), "{reason}");
+    }
+    let two = StopEdges::Two([200.0, 300.0]);
+    let stop = limited(FilterKind::Bandstop, Placement::Edges { edges_hz: [100.0, 11_999.0] }, two);
+    assert!(fits(&stop, 24_000));
 }
 
 #[test]
@@ -142,4 +179,21 @@ fn a_row_of_constant_q_widens_with_its_lines() {
     let placed = place(&spec(vec![stage], Vec::new(), BeyondHalfRate::Error), 48_000).unwrap();
     let edges: Vec<_> = placed.stages.iter().map(|stage| stage.edges_hz.clone()).collect();
     assert_eq!(edges, [[95.0, 105.0], [190.0, 210.0], [285.0, 315.0]]);
+}
+
+/// A response can't be matched at half the rate or above.
+#[test]
+fn an_analog_stage_that_is_matched_beyond_half_the_rate_is_left_out_or_named() {
+    let real = |value: f64| Coefficient { value, unit: 0.0 };
+    let poles = vec![Root { re: real(-1000.0), im: real(0.0) }];
+    let transfer = Transfer::Roots { zeros: Vec::new(), poles, gain: real(1000.0) };
+    let matched = |match_hz| Stage::Analog(AnalogStage { transfer: transfer.clone(), unit: RootUnit::Hertz, match_hz });
+    let stage = matched(Some(6000.0));
+    assert!(!fits(&stage, 12_000) && fits(&stage, 12_001) && fits(&matched(None), 1));
+    let placed = place(&spec(vec![stage.clone()], Vec::new(), BeyondHalfRate::LeaveOut), 8_000).unwrap();
+    assert!(placed.stages.is_empty());
+    assert_eq!(left_out(&placed), ["stage 1 (analog)"]);
+    assert_eq!(placed.left_out[0].reason, "its match_hz, 6000 Hz, is not below half the sample rate, 4000 Hz");
+    let text = place(&spec(vec![stage], Vec::new(), BeyondHalfRate::Error), 8_000).unwrap_err().to_string();
+    assert!(text.contains("its match_hz, 6000 Hz") && text.contains("beyond_half_rate = \"leave-out\""), "{text}");
 }

@@ -43,7 +43,7 @@ fn designs(sections: &[Section]) -> Vec<BandDesign> {
     let extent = Extent::Range { from_hz: 15_750.0, to_hz: 15_850.0 };
     let residual = Requirement::Residual { residual_dbfs: -90.0 };
     let whine = Band { name: "converter whine".to_owned(), extent, requirement: residual };
-    check(&placed(&[hum, birds, whine]), sections, RATE_HZ, 2.0)
+    check(&placed(&[hum, birds, whine]), sections, 1, RATE_HZ, 2.0)
 }
 
 #[test]

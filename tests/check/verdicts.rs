@@ -14,11 +14,14 @@ fn one(band: Band, sections: &[Section]) -> bandproof::design::BandDesign {
 
 fn sentences(bands: &[Band], sections: &[Section]) -> Vec<String> {
     let design = Design {
+        passes: 1,
         rate_hz: 48_000,
         left_out: Vec::new(),
         stages: Vec::new(),
         sections: sections.to_vec(),
         max_pole_radius: 0.0,
+        rounding_db: 0.0,
+        rounding_at_hz: 0.0,
         settling_s: 0.0,
         settling_frames: 0,
         bands: checked(bands, sections, RATE_HZ),
@@ -142,7 +145,7 @@ fn startup_and_shortest_length_are_those_of_the_band() {
     let sections = [notch(1_000.0, 40.0, RATE_HZ)];
     let bands = [band("hum", 998.0, 1_003.0, reduce(20.0)), band("seen", 10.0, 20.0, Requirement::Observe)];
     let placed = crate::common::placed(&bands);
-    let found = bandproof::design::check::check(&placed, &sections, RATE_HZ, 1.5);
+    let found = bandproof::design::check::check(&placed, &sections, 1, RATE_HZ, 1.5);
     let frames = startup_frames(&sections, 1_000.5, RATE_HZ, 20.0).unwrap();
     assert_eq!(found[0].startup_s, Some(frames as f64 / RATE_HZ));
     assert_eq!((found[0].shortest_s, found[1].shortest_s), (Some(3.5), None));

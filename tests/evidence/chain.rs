@@ -5,8 +5,8 @@ use crate::support::{Biquad, Noise, Take, add_line, expect, filter, rounded, rou
 use bandproof::design::{Design, design};
 use bandproof::evidence::{BandFigures, BandTask, Measured, ReasonCode, Verdict, cross_ranges, judge, unsettled};
 use bandproof::spec::{
-    Band, BeyondHalfRate, Extent, Family, FilterKind, FilterStage, OutputSpec, Placement, Requirement, Row, Spec,
-    Stage, Width,
+    Band, BeyondHalfRate, Extent, Family, FilterKind, FilterStage, Order, OutputSpec, Phase, Placement, Requirement,
+    Row, Spec, Stage, Width,
 };
 use bandproof::spectrum::{Accumulator, SegmentPlan, Transform, segment_frames};
 
@@ -19,6 +19,8 @@ fn spec() -> Spec {
     let stop = Row { center_hz: 50.0, width: Width::Hz(3.2), harmonics: 8 };
     let hum = Row { width: Width::Hz(1.0), ..stop };
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         reference_band: None,
         rate: None,
         title: None,
@@ -28,7 +30,7 @@ fn spec() -> Spec {
             Stage::Filter(FilterStage {
                 kind: FilterKind::Highpass,
                 family: Family::Butterworth,
-                order: 4,
+                order: Order::Given(4),
                 placement: Placement::Edge { edge_hz: 30.0 },
                 ripple_db: None,
                 stop_db: None,
@@ -36,7 +38,7 @@ fn spec() -> Spec {
             Stage::Filter(FilterStage {
                 kind: FilterKind::Bandstop,
                 family: Family::Elliptic,
-                order: 3,
+                order: Order::Given(3),
                 placement: Placement::Row(stop),
                 ripple_db: Some(0.1),
                 stop_db: Some(40.0),

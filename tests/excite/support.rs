@@ -1,7 +1,7 @@
 //! Specs, samples and spectra.
 
 use bandproof::excite::Plan;
-use bandproof::spec::{self, Band, BeyondHalfRate, Extent, OutputSpec, Requirement, Spec, SpecSyntax};
+use bandproof::spec::{self, Band, BeyondHalfRate, Extent, OutputSpec, Phase, Requirement, Spec, SpecSyntax};
 use bandproof::spectrum::{Accumulator, SegmentPlan, Spectra, Transform};
 use std::path::PathBuf;
 
@@ -26,6 +26,8 @@ pub fn parsed(text: &str) -> Spec {
 /// One range to be reduced, no stages.
 pub fn reduce(from_hz: f64, to_hz: f64, reduce_db: f64) -> Spec {
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         title: None,
         beyond_half_rate: BeyondHalfRate::Error,
         output: OutputSpec::default(),

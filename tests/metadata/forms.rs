@@ -66,7 +66,7 @@ fn forms_of_64_bits_take_a_history_and_keep_their_sizes_right() {
 /// A RIFF output that the history makes pass the limit becomes RF64 as any other does.
 #[test]
 fn a_history_may_be_what_passes_the_limit() {
-    let history = History { tool: "bandproof 0.1.0".to_owned(), spec_sha256: "ab".repeat(32) };
+    let history = History { tool: "bandproof 0.1.0".to_owned(), both_ways: false, spec_sha256: "ab".repeat(32) };
     let file = pcm16_mono(&[raw(b"JUNK", &[0; 28]), plain_bext(b"")], 50, &[]);
     let mut reader = Reader::open(Cursor::new(&file)).unwrap();
     let changes = Changes {

@@ -8,7 +8,7 @@ use std::io::Cursor;
 const SHA256: &str = "3d5f00000000000000000000000000000000000000000000000000000000abcd";
 
 pub fn told() -> History {
-    History { tool: "bandproof 0.1.0".to_owned(), spec_sha256: SHA256.to_owned() }
+    History { tool: "bandproof 0.1.0".to_owned(), both_ways: false, spec_sha256: SHA256.to_owned() }
 }
 
 /// What is written of a file, samples unchanged.
@@ -222,11 +222,33 @@ fn a_chunk_of_a_wrong_size_is_left() {
     assert!(figures.notes.iter().any(|note| note.contains("has a wrong size: no history")), "{:?}", figures.notes);
 }
 
+/// What stands in a coding history has no comma, which would end it.
+#[test]
+fn two_passes_are_told_as_such() {
+    let told = History { both_ways: true, ..told() };
+    let done = "filtered forward and backward (two passes; zero phase) by bandproof 0.1.0; spec SHA-256";
+    for (chunk, id, expected) in [
+        (plain_bext(b""), b"bext", format!("A=PCM,F=48000,W=16,M=mono,T={done} {SHA256}\r\n")),
+        (raw(b"guan", b"GUANO|Version: 1.0\n"), b"guan", format!("Bandproof|History: {done} {SHA256}\n")),
+    ] {
+        let mut reader = Reader::open(Cursor::new(recording(mono16(), &[chunk], &[]))).unwrap();
+        let changes = Changes { history: Some(told.clone()), ..Changes::samples(reader.header().format) };
+        let mut writer = Writer::begin(Vec::new(), &mut reader, &changes).unwrap();
+        let mut planes = vec![Vec::new()];
+        while reader.read(100, &mut planes).unwrap() > 0 {}
+        writer.write(&planes).unwrap();
+        reader.finish().unwrap();
+        let (output, _) = writer.finish(&mut reader).unwrap();
+        let body = String::from_utf8_lossy(bodies(&output, id)[0]).into_owned();
+        assert!(body.trim_end_matches('\0').ends_with(&expected), "{body:?}");
+    }
+}
+
 /// Text of a report that someone wrote can't begin a field or a line of its own.
 #[test]
 fn what_is_told_stays_on_its_line_and_in_its_field() {
     let mut reader = Reader::open(Cursor::new(recording(mono16(), &[plain_bext(b"")], &[]))).unwrap();
-    let history = History { tool: "a,b\r\nA=PCM,\u{e9}".to_owned(), spec_sha256: "c\0d".to_owned() };
+    let history = History { tool: "a,b\r\nA=PCM,\u{e9}".to_owned(), both_ways: false, spec_sha256: "c\0d".to_owned() };
     let changes = Changes { history: Some(history), ..Changes::samples(reader.header().format) };
     let mut writer = Writer::begin(Vec::new(), &mut reader, &changes).unwrap();
     let mut planes = vec![Vec::new()];

@@ -11,6 +11,7 @@
 mod bad_input;
 mod batch;
 mod fixtures;
+mod found;
 mod guard;
 mod identity;
 mod interrupted;
@@ -19,3 +20,4 @@ mod overload;
 mod recordings;
 mod resume;
 mod witness;
+mod zero_phase;

@@ -3,6 +3,7 @@
 
 use super::fixtures::{Bench, NOTCH_SPEC, entry, hum_and_noise, wav16};
 use serde_json::Value;
+use sha2::{Digest as _, Sha256};
 use std::fs;
 use std::time::SystemTime;
 
@@ -350,9 +351,14 @@ fn two_runs_into_one_folder_do_not_meet() {
 
 /// The first line of a journal of this job, and an entry a line.
 pub fn journal(bench: &Bench, spec_sha256: &str) -> String {
-    let version = env!("CARGO_PKG_VERSION");
-    let mut text = format!("{{\"format\":1,\"tool_version\":\"{version}\",\"spec_sha256\":\"{spec_sha256}\"}}\n");
-    for recording in bench.report()["recordings"].as_array().unwrap() {
+    let (version, report) = (env!("CARGO_PKG_VERSION"), bench.report());
+    let normalized: String =
+        Sha256::digest(report["spec"]["normalized"].to_string()).iter().map(|byte| format!("{byte:02x}")).collect();
+    let mut text = format!(
+        "{{\"format\":1,\"tool_version\":\"{version}\",\"spec_sha256\":\"{spec_sha256}\",\
+         \"normalized_sha256\":\"{normalized}\"}}\n"
+    );
+    for recording in report["recordings"].as_array().unwrap() {
         text.push_str(&serde_json::to_string(recording).unwrap());
         text.push('\n');
     }
@@ -370,14 +376,17 @@ fn a_journal_counts_as_far_as_it_is_whole() {
     let outputs = NAMES.map(|name| fs::read(bench.path(&format!("out/{name}"))).unwrap());
     let garbled = text.replacen("\"a.wav\"", "\"a.w\u{fffd}", 1);
     let other_spec = journal(&bench, &"0".repeat(64));
+    // Stages found for other sample rates.
+    let other_cascade = text.replacen("\"normalized_sha256\":\"", "\"normalized_sha256\":\"0", 1);
     let failed = format!("{text}{}\n", lines[1].replacen("\"done\"", "\"failed\"", 1));
     // What is in the journal, and which recordings it has done.
-    let cases: [(&str, &str, &[&str]); 6] = [
+    let cases: [(&str, &str, &[&str]); 7] = [
         ("whole", &text, &NAMES),
         ("cut in its last line", &text[..text.len() - 5], &NAMES),
         ("cut in a recording", &text[..lines[0].len() + lines[1].len() + 40], &NAMES[..1]),
         ("damaged in the middle", &garbled, &NAMES[1..]),
         ("of another spec", &other_spec, &[]),
+        ("of another cascade", &other_cascade, &[]),
         ("with a later failure that left the output", &failed, &NAMES),
     ];
     for (what, text, done) in cases {

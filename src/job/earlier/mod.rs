@@ -14,7 +14,10 @@ use super::paths;
 use crate::files::comparing::Comparing;
 use crate::files::digest::hexadecimal;
 use crate::package::Item;
-use crate::report::{Head, Highlights, Recording, Status, Summary, SummaryBuilder, TableWriter, read_report};
+use crate::report::{
+    Head, Highlights, Recording, SpecEntry, Status, Summary, SummaryBuilder, TableWriter, read_report,
+};
+use crate::spec::SpecFile;
 use claims::{Claim, Claims};
 use std::fs::File;
 use std::io::{self, BufReader, BufWriter};
@@ -77,16 +80,21 @@ enum Source {
 }
 
 impl Earlier {
-    /// Reads what is there for `job`, whose report goes to `report`. `listed` says whether
+    /// Reads what is there for `job` with `spec` in force, whose report goes to `report`. `listed` says whether
     /// a recording, by its path as reported and whether that is escaped, is part of the run
     /// to come.
     ///
     /// # Errors
-    /// The journal can't be read.
-    pub fn read(job: &FilterJob, report: &Path, listed: &dyn Fn(&str, bool) -> bool) -> io::Result<Self> {
-        let identity = Identity::of(&job.spec.file_sha256);
+    /// The journal can't be read; the spec does not go into JSON, which no spec that was read does.
+    pub fn read(
+        job: &FilterJob,
+        spec: &SpecFile,
+        report: &Path,
+        listed: &dyn Fn(&str, bool) -> bool,
+    ) -> io::Result<Self> {
+        let identity = Identity::of(spec)?;
         let mut claims = Claims::default();
-        let found = look(job, &identity, report, listed, &mut claims);
+        let found = look(spec, report, listed, &mut claims)?;
         if !found.counts() {
             claims = Claims::default();
         }
@@ -248,23 +256,17 @@ fn is_same(table: TableWriter<BufWriter<Comparing>>) -> io::Result<bool> {
 }
 
 /// Reads the report that is there.
-fn look(
-    job: &FilterJob,
-    identity: &Identity,
-    report: &Path,
-    listed: &dyn Fn(&str, bool) -> bool,
-    claims: &mut Claims,
-) -> Found {
+fn look(spec: &SpecFile, report: &Path, listed: &dyn Fn(&str, bool) -> bool, claims: &mut Claims) -> io::Result<Found> {
     match report.symlink_metadata() {
         Ok(metadata) if metadata.is_file() => {}
-        Ok(_) => return Found::Foreign(Some("no regular file".into())),
-        Err(_) => return Found::Nothing,
+        Ok(_) => return Ok(Found::Foreign(Some("no regular file".into()))),
+        Err(_) => return Ok(Found::Nothing),
     }
     let file = match File::open(report) {
         Ok(file) => file,
-        Err(cause) => return Found::Foreign(Some(format!("a file that can't be read: {cause}"))),
+        Err(cause) => return Ok(Found::Foreign(Some(format!("a file that can't be read: {cause}")))),
     };
-    let Ok(mut seen) = SummaryBuilder::new(&job.spec.spec) else { return Found::Foreign(None) };
+    let Ok(mut seen) = SummaryBuilder::new(&spec.spec) else { return Ok(Found::Foreign(None)) };
     let mut ordinal = 0;
     let mut strangers: Option<(u64, String)> = None;
     let read = read_report(BufReader::with_capacity(1 << 16, file), &mut |recording| {
@@ -279,25 +281,31 @@ fn look(
     });
     let (head, summary) = match read {
         Ok(parts) => parts,
-        Err(_) => return Found::Foreign(Some("no whole report of this program".into())),
+        Err(_) => return Ok(Found::Foreign(Some("no whole report of this program".into()))),
     };
-    if head.spec.file_sha256 != identity.spec_sha256 {
-        return Found::Foreign(Some("a report made with another spec".into()));
+    let own = SpecEntry::new(spec)?;
+    if head.spec.file_sha256 != own.file_sha256 {
+        return Ok(Found::Foreign(Some("a report made with another spec".into())));
     }
-    if head.tool_version != identity.tool_version {
-        return Found::Foreign(Some(format!("a report made by version {} of this program", head.tool_version)));
+    if head.spec.normalized != own.normalized {
+        return Ok(Found::Foreign(Some(
+            "a report made with another cascade from this spec, at other sample rates".into(),
+        )));
+    }
+    if head.tool_version != env!("CARGO_PKG_VERSION") {
+        return Ok(Found::Foreign(Some(format!("a report made by version {} of this program", head.tool_version))));
     }
     let (counted, highlights) = seen.finish(summary.skipped);
     if counted != summary {
-        return Found::Foreign(Some("a report whose summary is not what its recordings come to".into()));
+        return Ok(Found::Foreign(Some("a report whose summary is not what its recordings come to".into())));
     }
     if let Some((count, first)) = strangers {
-        return Found::Wider(format!(
+        return Ok(Found::Wider(format!(
             "a report that also lists what is not part of this run ({count} recording{}, the first {first})",
             if count == 1 { "" } else { "s" }
-        ));
+        )));
     }
-    Found::Ours(Box::new(Told { head, summary, highlights }))
+    Ok(Found::Ours(Box::new(Told { head, summary, highlights })))
 }
 
 /// Whether the path of an entry is escaped, which two names can have in common otherwise.

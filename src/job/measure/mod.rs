@@ -18,7 +18,7 @@ use crate::design::{Design, design};
 use crate::files::open;
 use crate::files::place::folder_of;
 use crate::report::{DesignEntry, Head, Recording, SummaryBuilder};
-use crate::spec::SpecFile;
+use crate::spec::{Spec, SpecFile};
 use crate::wave::{Header, RateMeaning, Reader};
 pub use entry::PairNames;
 use pairs::{Pair, Pairs, Sided};
@@ -84,7 +84,10 @@ fn measure_in_pool(job: &MeasureJob, progress: &dyn Progress) -> Result<Outcome,
     let Pairs { pairs, unpaired, unpaired_files, unreadable, skipped } =
         pairs::find(&job.before, &job.after, &job.include, &job.exclude, job.spec.spec.rate)?;
     refuse_to_overwrite(job, &pairs, &unpaired_files)?;
-    let rates = rates(job, &pairs)?;
+    let headers = pairs.iter().filter_map(|pair| pair.before.header.as_ref().ok());
+    // As in `filter`: what exceptions take out of keep bands follows from the stages.
+    let (spec, found) = super::plan::in_force(&job.spec, headers.map(|brief| brief.rate_hz), progress)?;
+    let rates = rates(job, &spec.spec, &pairs)?;
     let designs = design_entries(&rates)?;
     // Each recording is read twice.
     let bytes = pairs.iter().map(|pair| 2 * (pair.before.found.bytes + pair.after.found.bytes)).sum();
@@ -112,9 +115,10 @@ fn measure_in_pool(job: &MeasureJob, progress: &dyn Progress) -> Result<Outcome,
         .finish(skipped);
     summary.unpaired = Some(unpaired);
     let run = run_entry(started, clock, job.jobs, None);
-    let head = Head::new(run, complete, spec_entry(&job.spec)?, designs);
+    let head = Head::new(run, complete, spec_entry(&spec)?, designs);
     documents.finish(&|_| job.replace, &head, &journal, &summary)?;
     Ok(Outcome {
+        found,
         report_path: Some(job.report.clone()),
         table_path: job.table.clone(),
         seconds: clock.elapsed().as_secs_f64(),
@@ -141,9 +145,9 @@ fn refuse_to_overwrite(job: &MeasureJob, pairs: &[Pair], unpaired: &[PathBuf]) -
     })
 }
 
-/// The design at every sample rate of a recording before. Nothing is checked against it:
+/// The design of `spec` at every sample rate of a recording before. Nothing is checked against it:
 /// something else filtered.
-fn rates(job: &MeasureJob, pairs: &[Pair]) -> Result<BTreeMap<u32, Rate>, JobError> {
+fn rates(job: &MeasureJob, spec: &Spec, pairs: &[Pair]) -> Result<BTreeMap<u32, Rate>, JobError> {
     let noise = job
         .noise
         .as_deref()
@@ -158,8 +162,8 @@ fn rates(job: &MeasureJob, pairs: &[Pair]) -> Result<BTreeMap<u32, Rate>, JobErr
         }
     }
     let designed = |(&rate_hz, &recording): (&u32, &&str)| {
-        let spec = &job.spec.spec;
-        let design = design(spec, rate_hz).map_err(|cause| JobError::Design { recording: recording.into(), cause })?;
+        let design = design(spec, rate_hz)
+            .map_err(|cause| JobError::Design { recording: recording.into(), cause: cause.into() })?;
         let task = PairTask {
             max_delay_s: job.max_delay_s,
             delay_frames: job.delay_frames,
