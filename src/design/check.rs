@@ -47,6 +47,7 @@ pub struct BandDesign {
     /// Group delay at the band's arithmetic center; `None` for reduce and residual bands.
     pub group_delay_s: Option<f64>,
     /// Seconds until a steady line at the center is down by `reduce_db`; reduce bands only.
+    /// With two passes it is as many seconds before the end that it is no more.
     pub startup_s: Option<f64>,
     /// Shortest recording in which the band can be judged: settling plus 10 bins;
     /// `None` without a requirement.
@@ -77,38 +78,55 @@ const TOLERANCE_DB: f64 = 1e-6;
 /// Bins that a band must hold to be judged: see [`BandDesign::shortest_s`].
 const BINS: f64 = 10.0;
 
-/// Holds every placed band against the response of `sections`, the net response
-/// before any output gain. `settling_s` is that of the whole cascade.
+/// Holds every placed band against the net response before any output gain: that of `sections`
+/// run once, or forward and backward where `passes` is 2. `settling_s` is what a recording
+/// leaves out, at both ends together.
 ///
 /// Extremes are those of the response at any frequency of the band, ends included
 /// (see [`Profile`]).
-pub fn check(placed: &Placed, sections: &[Section], rate_hz: f64, settling_s: f64) -> Vec<BandDesign> {
-    let marks: Vec<f64> =
-        placed.bands.iter().flat_map(|band| [band.line.from_hz, band.line.center_hz, band.line.to_hz]).collect();
-    let profile = Profile::new(sections, rate_hz, &marks);
+pub fn check(placed: &Placed, sections: &[Section], passes: u32, rate_hz: f64, settling_s: f64) -> Vec<BandDesign> {
     let lines: Vec<(f64, f64)> = placed
         .bands
         .iter()
-        .filter_map(|band| match band.requirement {
-            Requirement::Reduce { reduce_db } => Some((band.line.center_hz, reduce_db)),
-            _ => None,
-        })
+        .filter_map(|band| band.requirement.reduce_db().map(|reduce_db| (band.line.center_hz, reduce_db)))
         .collect();
-    let mut startups = settling::startups(sections, rate_hz, &lines).into_iter();
+    let both_ways = passes > 1;
+    let startups = if both_ways { settling::startups_both_ways } else { settling::startups };
+    let mut startups = startups(sections, rate_hz, &lines).into_iter();
+    let mut designs = judge(placed, &sections.repeat(passes as usize), rate_hz);
+    for design in &mut designs {
+        let line = design.band.line;
+        match design.band.requirement {
+            Requirement::Reduce { .. } => {
+                design.startup_s = startups.next().flatten().map(|frames| frames as f64 / rate_hz);
+            }
+            Requirement::Keep { .. } | Requirement::Observe if both_ways => design.group_delay_s = Some(0.0),
+            Requirement::Keep { .. } | Requirement::Observe => {
+                let center_hz = 0.5 * (line.from_hz + line.to_hz);
+                let delay_s = response::group_delay_s(sections, center_hz, rate_hz);
+                design.group_delay_s = Some(delay_s).filter(|s| s.is_finite());
+            }
+            Requirement::Residual { .. } => {}
+        }
+        let is_required = design.band.requirement != Requirement::Observe;
+        design.shortest_s = is_required.then(|| settling_s + BINS / (line.to_hz - line.from_hz));
+    }
+    designs
+}
+
+/// [`check`] of `net_sections`, all passes one after another, without the times, which take
+/// longest to find: `group_delay_s`, `startup_s` and `shortest_s` are `None`.
+pub fn judge(placed: &Placed, net_sections: &[Section], rate_hz: f64) -> Vec<BandDesign> {
+    let marks: Vec<f64> =
+        placed.bands.iter().flat_map(|band| [band.line.from_hz, band.line.center_hz, band.line.to_hz]).collect();
+    let profile = Profile::new(net_sections, rate_hz, &marks);
     placed
         .bands
         .iter()
         .map(|band| {
-            let mut design = unjudged(band.clone(), settling_s);
-            let delay_s = || {
-                let center_hz = 0.5 * (band.line.from_hz + band.line.to_hz);
-                Some(response::group_delay_s(sections, center_hz, rate_hz)).filter(|s| s.is_finite())
-            };
+            let mut design = unjudged(band.clone());
             match &band.requirement {
-                Requirement::Reduce { reduce_db } => {
-                    reduce(&profile, *reduce_db, &mut design);
-                    design.startup_s = startups.next().flatten().map(|frames| frames as f64 / rate_hz);
-                }
+                Requirement::Reduce { reduce_db } => reduce(&profile, *reduce_db, &mut design),
                 Requirement::Residual { residual_dbfs } => {
                     reduce(&profile, -residual_dbfs, &mut design);
                     // However little is let through, it may have been too loud before.
@@ -117,13 +135,10 @@ pub fn check(placed: &Placed, sections: &[Section], rate_hz: f64, settling_s: f6
                 }
                 Requirement::Keep { keep_db, except } => {
                     keep(&profile, *keep_db, except, &placed.bands, &mut design);
-                    design.group_delay_s = delay_s();
                 }
                 Requirement::Observe => {
                     let points: Vec<Point> = profile.within(band.line.from_hz, band.line.to_hz).collect();
                     set_extremes(&points, &mut design);
-                    design.group_delay_s = delay_s();
-                    design.shortest_s = None;
                 }
             }
             design
@@ -131,7 +146,7 @@ pub fn check(placed: &Placed, sections: &[Section], rate_hz: f64, settling_s: f6
         .collect()
 }
 
-fn unjudged(band: NamedBand, settling_s: f64) -> BandDesign {
+fn unjudged(band: NamedBand) -> BandDesign {
     BandDesign {
         attenuation_min_db: 0.0,
         attenuation_max_db: 0.0,
@@ -139,7 +154,7 @@ fn unjudged(band: NamedBand, settling_s: f64) -> BandDesign {
         excepted_hz: Vec::new(),
         group_delay_s: None,
         startup_s: None,
-        shortest_s: Some(settling_s + BINS / (band.line.to_hz - band.line.from_hz)),
+        shortest_s: None,
         check: None,
         violation: None,
         band,

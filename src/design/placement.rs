@@ -1,13 +1,13 @@
 //! Which lines of which stages and bands fit below half a sample rate.
 //!
-//! The bilinear transform maps half the rate to infinity, so a stage's edges must lie
-//! below it. A band is only looked at: its upper end may be half the rate itself.
+//! The bilinear transform maps half the rate to infinity, so a stage's edges and stop edges
+//! must lie below it, and so must the match_hz of an analog one. A band is only looked at: its upper end may be half the rate itself.
 //! Lines of a row of two or more are left out quietly where they do not fit, as long
 //! as the first does; whatever else does not fit is the spec's to decide.
 
-use super::DesignError;
 use super::wording::figure;
-use crate::spec::{Band, BeyondHalfRate, Line, NamedBand, Placement, Spec, Stage};
+use super::{DesignError, limits};
+use crate::spec::{Band, BeyondHalfRate, EqualizerKind, FilterStage, Line, NamedBand, Order, Placement, Spec, Stage};
 
 /// Relative excess over half the rate that a plain band's end may have from the
 /// arithmetic of center and span.
@@ -24,8 +24,22 @@ pub struct PlacedStage {
     pub harmonic: Option<u32>,
     /// Edges, Hz: one for low-pass and high-pass, two for the others (a notch: half
     /// its width below and above the center as written; the digital notch keeps
-    /// center and width exactly, so its -3 dB points lie slightly off these).
+    /// center and width exactly, so its -3 dB points lie slightly off these). One for the
+    /// frequency of a peak or shelf, none for a weighting or a transfer function.
     pub edges_hz: Vec<f64>,
+}
+
+impl PlacedStage {
+    /// `stage 2, line 7 (350 Hz)`; the number is the one a reader of the spec counts.
+    pub fn label(&self) -> String {
+        let line = self.harmonic.map(|harmonic| format!(", line {harmonic}")).unwrap_or_default();
+        let place = match *self.edges_hz {
+            [edge] => format!("{} Hz", figure(edge)),
+            [low, high] => format!("{} Hz", figure((low + high) / 2.0)),
+            _ => self.stage.kind_name().to_owned(),
+        };
+        format!("stage {}{line} ({place})", self.stage_index + 1)
+    }
 }
 
 /// Something that does not fit and is left out at this rate.
@@ -112,6 +126,12 @@ fn place_stage(stage_index: usize, stage: &Stage, half: HalfRate, placed: &mut P
     let one = |harmonic, edges_hz| PlacedStage { stage_index, stage: stage.clone(), harmonic, edges_hz };
     let (row, edges_hz) = match stage {
         Stage::Notch(notch) => (Some(notch.row), Vec::new()),
+        Stage::Equalizer(equalizer) => (None, vec![equalizer.hz]),
+        Stage::Weighting(_) | Stage::Digital(_) => (None, Vec::new()),
+        Stage::Analog(analog) => match analog.match_hz.filter(|match_hz| *match_hz >= half.hz()) {
+            Some(match_hz) => return Err(whole(half.reached_by("match_hz", match_hz))),
+            None => (None, Vec::new()),
+        },
         Stage::Filter(filter) => match &filter.placement {
             Placement::Row(row) => (Some(*row), Vec::new()),
             Placement::Edge { edge_hz } => (None, vec![*edge_hz]),
@@ -119,9 +139,13 @@ fn place_stage(stage_index: usize, stage: &Stage, half: HalfRate, placed: &mut P
         },
     };
     let Some(row) = row else {
-        if let Some(edge_hz) = edges_hz.last().filter(|edge_hz| **edge_hz >= half.hz()) {
-            let edge = if edges_hz.len() == 1 { "edge" } else { "upper edge" };
-            return Err(whole(half.reached_by(edge, *edge_hz)));
+        let is_peak = matches!(stage, Stage::Equalizer(equalizer) if equalizer.kind == EqualizerKind::Peak);
+        let edge = if is_peak { "center" } else { "edge" };
+        let stop_hz = stop_edges_hz(stage);
+        for (hz, one, upper) in [(edges_hz.as_slice(), edge, "upper edge"), (stop_hz, "stop edge", "upper stop edge")] {
+            if let Some(edge_hz) = hz.last().filter(|edge_hz| **edge_hz >= half.hz()) {
+                return Err(whole(half.reached_by(if hz.len() == 1 { one } else { upper }, *edge_hz)));
+            }
         }
         placed.stages.push(one(None, edges_hz));
         return Ok(());
@@ -140,6 +164,15 @@ fn place_stage(stage_index: usize, stage: &Stage, half: HalfRate, placed: &mut P
         reason: half.reached_by("upper edge", line.to_hz),
     }));
     Ok(())
+}
+
+/// Stop edges of a stage whose order follows from limits, Hz. Where one reaches half the rate
+/// there is no stop band for an order to follow from, so the stage does not fit.
+fn stop_edges_hz(stage: &Stage) -> &[f64] {
+    match stage {
+        Stage::Filter(FilterStage { order: Order::Limits(stop), .. }) => limits::stop_edges_hz(stop),
+        _ => &[],
+    }
 }
 
 fn place_band(band: &Band, half: HalfRate, placed: &mut Placed) -> Result<(), LeftOut> {

@@ -45,10 +45,14 @@ pub fn at(sections: &[Section], frequency_hz: f64, rate_hz: f64) -> Complex64 {
 ///
 /// Never underflows: the magnitudes of a long cascade are gathered in logarithms.
 pub fn gain_db(sections: &[Section], frequency_hz: f64, rate_hz: f64) -> f64 {
-    let point = Point::new(frequency_hz, rate_hz);
+    gain_db_at(sections, &Point::new(frequency_hz, rate_hz))
+}
+
+/// [`gain_db`] at a point.
+pub(super) fn gain_db_at(sections: &[Section], point: &Point) -> f64 {
     let (mut log10_sum, mut product) = (0.0, 1.0);
     for section in sections {
-        product *= power_at(section.b, section.a, &point);
+        product *= power_at(section.b, section.a, point);
         if !(1e-150..=1e150).contains(&product) {
             if product == 0.0 {
                 return f64::NEG_INFINITY;
@@ -75,6 +79,17 @@ pub fn group_delay_s(sections: &[Section], frequency_hz: f64, rate_hz: f64) -> f
     frames / rate_hz
 }
 
+/// arg H, radians, continuous from 0 Hz on, where it is 0 for a positive gain; NaN where H
+/// is 0.
+///
+/// A zero on the unit circle turns it by pi upward, as the limit of zeros inside does.
+pub fn phase_rad(sections: &[Section], frequency_hz: f64, rate_hz: f64) -> f64 {
+    let point = Point::new(frequency_hz, rate_hz);
+    let angle = 2.0 * PI * (frequency_hz / rate_hz);
+    let of = |p: [f64; 3]| Polynomial::new(p).phase(&point, angle);
+    sections.iter().map(|section| of(section.b) - of(section.a)).sum()
+}
+
 /// |B/A|^2 at one point.
 pub(super) fn power_at(b: [f64; 3], a: [f64; 3], point: &Point) -> f64 {
     magnitude_squared(Polynomial::new(b).value(point)) / magnitude_squared(Polynomial::new(a).value(point))
@@ -90,8 +105,8 @@ fn magnitude_squared(v: Complex64) -> f64 {
 /// The trigonometry of one frequency.
 pub(super) struct Point {
     /// sin(w/2) and cos(w/2), each to its last digits.
-    half_sin: f64,
-    half_cos: f64,
+    pub(super) half_sin: f64,
+    pub(super) half_cos: f64,
     /// sin w and cos w.
     sin: f64,
     cos: f64,
@@ -100,7 +115,7 @@ pub(super) struct Point {
 }
 
 impl Point {
-    fn new(frequency_hz: f64, rate_hz: f64) -> Point {
+    pub(super) fn new(frequency_hz: f64, rate_hz: f64) -> Point {
         // rate/2 - f is exact in the upper half of the range, so cos(w/2) keeps its
         // digits up to half the rate, as sin(w/2) does down to 0.
         let low = frequency_hz <= rate_hz / 4.0;
@@ -123,13 +138,13 @@ impl Point {
 }
 
 /// p0 + p1 z^-1 + p2 z^-2 with its true degree.
-struct Polynomial {
+pub(super) struct Polynomial {
     p: [f64; 3],
     degree: u32,
 }
 
 impl Polynomial {
-    fn new(p: [f64; 3]) -> Polynomial {
+    pub(super) fn new(p: [f64; 3]) -> Polynomial {
         let degree = if p[2] != 0.0 {
             2
         } else if p[1] != 0.0 {
@@ -160,6 +175,29 @@ impl Polynomial {
                 Complex64::new(re, (p0 - p2) * point.sin)
             }
         }
+    }
+
+    /// arg P at `angle`. The imaginary part of P(z) z^(degree/2) has one sign between both
+    /// ends or is 0, so its argument has no jumps but those at zeros.
+    fn phase(&self, point: &Point, angle: f64) -> f64 {
+        let value = self.value(point);
+        if value.re == 0.0 && value.im == 0.0 {
+            return f64::NAN;
+        }
+        libm::atan2(value.im, value.re) - 0.5 * f64::from(self.degree) * angle
+    }
+
+    /// Re(z^-k / P) for k = 0, 1, 2: what a small change of each coefficient adds to
+    /// ln |P|. Not finite at a zero; for coefficients that P has.
+    pub(super) fn log_weights(&self, point: &Point) -> [f64; 3] {
+        let value = self.value(point);
+        // Turned by as many half angles as the value.
+        let turned = match self.degree {
+            0 => [(1.0, 0.0), (1.0, 0.0), (1.0, 0.0)],
+            1 => [(point.half_cos, point.half_sin), (point.half_cos, -point.half_sin), (0.0, 0.0)],
+            _ => [(point.cos, point.sin), (1.0, 0.0), (point.cos, -point.sin)],
+        };
+        turned.map(|(re, im)| (re * value.re + im * value.im) / magnitude_squared(value))
     }
 
     /// What the polynomial adds to the group delay, in frames: -d(arg P)/dw.
@@ -252,6 +290,31 @@ mod tests {
         let dc_block = Section { b: [1.0, -1.0, 0.0], a: [1.0, -0.9, 0.0] };
         assert_eq!(gain_db(&[dc_block], 0.0, 48_000.0), f64::NEG_INFINITY);
         assert!(group_delay_s(&[dc_block], 0.0, 48_000.0).is_finite());
+    }
+
+    /// The argument but for whole turns, and its slope is the group delay, in which jumps of
+    /// half a turn at zeros on the circle do not count.
+    #[test]
+    fn the_phase_is_the_argument_and_its_slope_the_group_delay() {
+        let resonance = Section { b: [0.3, -0.2, 0.7], a: [1.0, -1.8, 0.97] };
+        let notch = Section { b: [1.0, -1.2, 1.0], a: [1.0, -1.1, 0.81] };
+        let dc_block = Section { b: [1.0, -1.0, 0.0], a: [1.0, -0.9, 0.0] };
+        let twice = Section { b: [1.0, -2.0, 1.0], a: [1.0, 0.4, 0.0] };
+        let sections = [resonance, notch, dc_block, twice, DELAY];
+        for i in 1..400 {
+            let hz = 10.0 * f64::from(i) - 5.0;
+            let (phase, h) = (phase_rad(&sections, hz, 8_000.0), at(&sections, hz, 8_000.0));
+            let turns = (phase - libm::atan2(h.im, h.re)) / (2.0 * PI);
+            assert!((turns - turns.round()).abs() < 1e-12, "{hz} Hz: {turns}");
+            // Central difference over 0.02 Hz.
+            let [below, above] = [hz - 0.01, hz + 0.01].map(|hz| phase_rad(&sections, hz, 8_000.0));
+            let delay_s = -(above - below) / (2.0 * PI * 0.02);
+            assert!((delay_s - group_delay_s(&sections, hz, 8_000.0)).abs() < 1e-8, "{hz} Hz");
+        }
+        // Two zeros at 0 Hz: half a turn there; the third a quarter.
+        assert!((phase_rad(&[twice], 1e-6, 8_000.0) - PI).abs() < 1e-8);
+        assert!((phase_rad(&[dc_block], 1e-9, 8_000.0) - PI / 2.0).abs() < 1e-8);
+        assert!(phase_rad(&[dc_block], 0.0, 8_000.0).is_nan());
     }
 
     #[test]

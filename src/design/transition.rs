@@ -9,6 +9,7 @@
 //! | Chebyshev I | the edge: the ripple ends | the same |
 //! | Chebyshev II | the half-power point | the edge: the stop band begins |
 //! | elliptic | the edge: the ripple ends | where the stop attenuation is first reached |
+//! | any, its order found from limits | the edge: the ripple ends | where the stop attenuation is first reached |
 //! | notch | the half-power point of the digital filter | where the required attenuation is first reached |
 //!
 //! The required attenuation is the largest `reduce_db` of a band with its center on the
@@ -19,10 +20,10 @@
 use super::extrema::Profile;
 use super::{BandDesign, PlacedStage};
 use crate::section::Section;
-use crate::spec::{Family, FilterKind, Stage};
+use crate::spec::{Family, FilterKind, Order, Stage};
 
 /// Attenuation at the half-power points: 10 log10 2 dB.
-const HALF_POWER_DB: f64 = 3.010_299_956_639_812;
+pub(super) const HALF_POWER_DB: f64 = 3.010_299_956_639_812;
 
 /// From pass band to stop band at one edge.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -57,8 +58,9 @@ enum Side {
 /// The transitions of `placed`, one for each of its edges in their order; `sections` are
 /// those of this stage alone, and `bands` all bands of the design.
 pub fn transitions(placed: &PlacedStage, sections: &[Section], rate_hz: f64, bands: &[BandDesign]) -> Vec<Transition> {
-    let profile = Profile::new(sections, rate_hz, &placed.edges_hz);
     let sides: &[Side] = match &placed.stage {
+        // They have no edges between a pass band and a stop band.
+        Stage::Equalizer(_) | Stage::Weighting(_) | Stage::Digital(_) | Stage::Analog(_) => return Vec::new(),
         Stage::Notch(_) => &[Side::Above, Side::Below],
         Stage::Filter(filter) => match filter.kind {
             FilterKind::Lowpass => &[Side::Above],
@@ -67,19 +69,26 @@ pub fn transitions(placed: &PlacedStage, sections: &[Section], rate_hz: f64, ban
             FilterKind::Bandstop => &[Side::Above, Side::Below],
         },
     };
+    let profile = Profile::new(sections, rate_hz, &placed.edges_hz);
     let edges = placed.edges_hz.iter().zip(sides);
     edges.map(|(&edge_hz, &side)| transition(placed, &profile, (edge_hz, side), bands)).collect()
 }
 
 fn transition(placed: &PlacedStage, profile: &Profile<'_>, edge: (f64, Side), bands: &[BandDesign]) -> Transition {
     let (edge_hz, side) = edge;
-    let (family, ripple_db, stop_db) = match &placed.stage {
-        Stage::Notch(_) => (None, None, None),
-        Stage::Filter(filter) => (Some(filter.family), filter.ripple_db, filter.stop_db),
+    let (family, limited, ripple_db, stop_db) = match &placed.stage {
+        Stage::Notch(_) | Stage::Equalizer(_) | Stage::Weighting(_) | Stage::Digital(_) | Stage::Analog(_) => {
+            (None, false, None, None)
+        }
+        Stage::Filter(filter) => {
+            let limited = matches!(filter.order, Order::Limits(_));
+            (Some(filter.family), limited, filter.ripple_db, filter.stop_db)
+        }
     };
     let pass_db = ripple_db.unwrap_or(HALF_POWER_DB);
     let stop_db = stop_db.or_else(|| required_db(placed, profile, edge, pass_db, bands));
     let pass_hz = match family {
+        _ if limited => Some(edge_hz),
         // Upward through the transition, from the stop edge.
         Some(Family::Chebyshev2) => out_of(profile, edge_hz, side, |gain_db| gain_db < -pass_db),
         // Outward from the zero; the edges as written are off by the bilinear transform.
@@ -90,7 +99,7 @@ fn transition(placed: &PlacedStage, profile: &Profile<'_>, edge: (f64, Side), ba
         Some(Family::Butterworth | Family::Bessel | Family::Chebyshev1 | Family::Elliptic) => Some(edge_hz),
     };
     let stop_hz = match (family, stop_db, pass_hz) {
-        (Some(Family::Chebyshev2), ..) => Some(edge_hz),
+        (Some(Family::Chebyshev2), ..) if !limited => Some(edge_hz),
         (_, Some(stop_db), Some(pass_hz)) => into_stop(profile, pass_hz, side, stop_db),
         _ => None,
     };
@@ -127,8 +136,8 @@ fn required_db(
     bands: &[BandDesign],
 ) -> Option<f64> {
     let stops_between = match &placed.stage {
-        Stage::Notch(_) => true,
         Stage::Filter(filter) => filter.kind == FilterKind::Bandstop,
+        stage => matches!(stage, Stage::Notch(_)),
     };
     let on_stop_side = |center_hz: f64| match (stops_between, side, placed.edges_hz.as_slice()) {
         (true, _, [low_hz, high_hz]) => (*low_hz..=*high_hz).contains(&center_hz),

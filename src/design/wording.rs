@@ -1,4 +1,4 @@
-//! Figures and sentences that the design's messages have in common.
+//! Figures and sentences that messages about a design have in common.
 
 use super::check::{BandDesign, Check};
 use crate::spec::Requirement;
@@ -11,8 +11,21 @@ pub fn figure(value: f64) -> String {
 }
 
 /// A level or attenuation as the report rounds it.
-fn decibel(value: f64) -> String {
+pub fn decibel(value: f64) -> String {
     figure(libm::round(value * 1000.0) / 1000.0)
+}
+
+/// `value` as [`decibel`], or with as many more decimals (up to 12) as show by how much its
+/// magnitude lies beyond `limit`, to a tenth: `-0.62`, `-0.2000013` of 0.2.
+pub fn beyond(value: f64, limit: f64) -> String {
+    let over = value.abs() - limit.abs();
+    let shown = |places: usize| format!("{value:.places$}");
+    let tells = |text: &String| {
+        text.parse().is_ok_and(|shown: f64| (shown.abs() - limit.abs() - over).abs() <= 0.1 * over.abs())
+    };
+    let text = (3..12).map(shown).find(tells).unwrap_or_else(|| shown(12));
+    let short = text.trim_end_matches('0').trim_end_matches('.');
+    if short == "-0" { "0".to_owned() } else { short.to_owned() }
 }
 
 /// What is impossible about a band, with the figure and the repair; `None` where
@@ -25,7 +38,7 @@ pub fn impossible(band: &BandDesign, rate_hz: u32, has_stages: bool) -> Option<S
     let (from_hz, to_hz) = (figure(band.band.line.from_hz), figure(band.band.line.to_hz));
     match (&band.band.requirement, band.violation) {
         (Requirement::Keep { keep_db, .. }, Some(violation)) => {
-            let (gain_db, at_hz) = (decibel(violation.gain_db), figure(violation.at_hz));
+            let (gain_db, at_hz) = (beyond(violation.gain_db, *keep_db), figure(violation.at_hz));
             let repair = if violation.gain_db < 0.0 {
                 "raise keep_db, narrow the band, move the edge of the stage that takes it out, \
                  or name the reduce band that lies there in except"
@@ -52,7 +65,7 @@ pub fn impossible(band: &BandDesign, rate_hz: u32, has_stages: bool) -> Option<S
                 "{name}: reduce_db = {} can't be reached, the largest attenuation from {from_hz} to {to_hz} Hz \
                  is {} dB{at}; raise stop_db or order, widen the stop or move it onto the band, or lower reduce_db",
                 figure(*reduce_db),
-                decibel(band.attenuation_max_db)
+                beyond(band.attenuation_max_db, *reduce_db)
             ))
         }
         (Requirement::Residual { .. } | Requirement::Observe, _) => None,
@@ -61,7 +74,23 @@ pub fn impossible(band: &BandDesign, rate_hz: u32, has_stages: bool) -> Option<S
 
 #[cfg(test)]
 mod tests {
-    use super::figure;
+    use super::{beyond, figure};
+
+    #[test]
+    fn a_figure_beyond_its_limit_shows_by_how_much() {
+        let cases = [
+            (-0.62, 0.2, "-0.62"),
+            (-0.200_001_304, 0.2, "-0.2000013"),
+            (26.999_98, 27.0, "26.99998"),
+            (26.0, 27.0, "26"),
+            (-15.104_2, 27.0, "-15.104"),
+            (0.5, 0.5, "0.5"),
+            (0.0, 0.0, "0"),
+        ];
+        for (value, limit, text) in cases {
+            assert_eq!(beyond(value, limit), text);
+        }
+    }
 
     #[test]
     fn figures_have_no_trailing_zeros_and_no_negative_zero() {

@@ -2,8 +2,7 @@
 
 use super::{Db, Finite, Hz, Methods, NotFinite, Require, Seconds, schema};
 use crate::design::check::CAP_DB;
-use crate::design::sections::{self, StageSize};
-use crate::design::{BandDesign, Check, Design, LeftOut, PlacedStage, Violation};
+use crate::design::{BandDesign, Check, Design, DesignedStage, LeftOut, Slack, Violation};
 use crate::section::Section;
 use crate::spec::{self, Family, Stage};
 use schemars::JsonSchema;
@@ -22,16 +21,25 @@ pub struct DesignEntry {
     /// The cascade in the order it runs, coefficients in full.
     #[serde(serialize_with = "finite_sections")]
     pub sections: Vec<Section>,
-    /// How often the cascade runs over the samples.
+    /// How often the cascade runs over the samples: 1, or 2 for forward and backward. `sections`,
+    /// orders and `max_pole_radius` are those of one pass, everything else that of both.
     #[schemars(range(min = 1))]
     pub passes: u32,
     /// Seconds until the tail of the impulse response no longer matters: figures of
-    /// recordings leave out as much at the start.
+    /// recordings leave out as much at the start, with two passes also at the end.
     #[schemars(extend("minimum" = 0))]
     pub settling_s: Seconds,
     /// Largest distance of a pole from zero; 0 for the identity, always below 1.
     #[schemars(extend("minimum" = 0, "exclusiveMaximum" = 1))]
     pub max_pole_radius: Finite,
+    /// How far the net response is at most, dB, from that of coefficients with all their digits,
+    /// of which `sections` holds 53 binary ones; where it is below -80 dB, as a part of that
+    /// level. To three digits. Of weighting stages and of sections as given a bound, which
+    /// rounding stays within; calculated of all others.
+    #[schemars(extend("minimum" = 0))]
+    pub rounding_db: Finite,
+    /// Where it is farthest, Hz; null for the identity, which has no coefficients.
+    pub rounding_at_hz: Option<Hz>,
     /// Name and version of the dither, or `none`. It speaks of integer output;
     /// float output is never dithered.
     #[schemars(schema_with = "schema::dither")]
@@ -79,13 +87,48 @@ pub struct StageEntry {
     pub total_order: u32,
     /// Second-order sections it takes.
     pub sections: u32,
-    /// One edge, or the lower and the upper, Hz; a notch: its -3 dB points.
-    #[schemars(length(min = 1, max = 2))]
+    /// One edge, or the lower and the upper, Hz, as written; a notch: its -3 dB points. The
+    /// frequency of a peak or shelf; none for a weighting or a transfer function.
+    #[schemars(length(max = 2))]
     pub edges_hz: Vec<Hz>,
-    /// Ripple of the pass band, dB; null for families without.
+    /// Ripple of the pass band, dB; null for families without, unless the order was found
+    /// from limits.
     pub ripple_db: Option<Finite>,
-    /// Attenuation of the stop band, dB; null for families without.
+    /// Attenuation of the stop band, dB; null for families without, unless the order was
+    /// found from limits.
     pub stop_db: Option<Finite>,
+    /// What the exact response leaves of each limit where the order was found from limits,
+    /// pass edges first; empty where the order is given.
+    pub limits: Vec<LimitEntry>,
+    /// What else there is to know of this stage at this rate, in sentences.
+    pub remarks: Vec<String>,
+}
+
+/// A limit of a stage whose order was found from limits, and what is left of it.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
+#[serde(deny_unknown_fields)]
+pub struct LimitEntry {
+    /// Which side of the transition the edge belongs to.
+    pub edge: LimitEdge,
+    /// The edge, Hz.
+    pub at_hz: Hz,
+    /// Attenuation of all passes that is allowed at most on the pass side, or asked for on the
+    /// stop side, dB.
+    pub limit_db: Finite,
+    /// How far the exact response stays on the right side of the limit, dB, at its worst
+    /// frequency from the edge on, and at most 180. Between two edges of the same side each
+    /// speaks for its half.
+    pub slack_db: Db,
+}
+
+/// A side of the transition.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
+#[serde(rename_all = "lowercase")]
+pub enum LimitEdge {
+    /// The pass band ends here.
+    Pass,
+    /// The stop band begins here.
+    Stop,
 }
 
 /// What the exact response promises in one band. Attenuations stop at 180 dB.
@@ -115,8 +158,8 @@ pub struct DesignBand {
     pub excepted_hz: Hz,
     /// Group delay at the center, seconds; null for reduce and residual bands.
     pub group_delay_s: Option<Seconds>,
-    /// Seconds until a steady line at the center is down by `reduce_db`; null for
-    /// other bands and for a line that never is.
+    /// Seconds until a steady line at the center is down by `reduce_db`, with two passes also
+    /// from there to the end; null for other bands and for a line that never is.
     #[schemars(extend("minimum" = 0))]
     pub startup_s: Option<Seconds>,
     /// Length of the shortest recording in which the band can be judged, seconds; null
@@ -200,9 +243,11 @@ impl DesignEntry {
             left_out: design.left_out.iter().map(LeftOutEntry::from).collect(),
             stages: design.stages.iter().map(StageEntry::new).collect::<Result<_, _>>()?,
             sections: design.sections.clone(),
-            passes: 1,
+            passes: design.passes,
             settling_s: design.settling_s.try_into()?,
             max_pole_radius: design.max_pole_radius.try_into()?,
+            rounding_db: three_digits(design.rounding_db).try_into()?,
+            rounding_at_hz: if design.sections.is_empty() { None } else { Some(design.rounding_at_hz.try_into()?) },
             dither: methods.dither.clone(),
             bands: design.bands.iter().map(DesignBand::new).collect::<Result<_, _>>()?,
             witness,
@@ -218,32 +263,47 @@ impl From<&LeftOut> for LeftOutEntry {
 }
 
 impl StageEntry {
-    /// The entry for one placed stage.
+    /// The entry for one stage.
     ///
     /// # Errors
-    /// An edge, ripple or stop attenuation is NaN or infinite.
-    pub fn new(placed: &PlacedStage) -> Result<Self, NotFinite> {
+    /// An edge, ripple, stop attenuation or slack is NaN or infinite.
+    pub fn new(stage: &DesignedStage) -> Result<Self, NotFinite> {
+        let DesignedStage { placed, size, .. } = stage;
         let edges_hz = placed.edges_hz.iter().map(|&hz| hz.try_into()).collect::<Result<_, _>>()?;
-        let StageSize { total_order, sections } = sections::size(&placed.stage);
         let entry = StageEntry {
             stage: placed.stage_index + 1,
             line: placed.harmonic,
             kind: placed.stage.kind_name().to_owned(),
             family: None,
             order: None,
-            total_order,
-            sections,
+            total_order: size.total_order,
+            sections: size.sections,
             edges_hz,
             ripple_db: None,
             stop_db: None,
+            limits: stage.slack.iter().map(LimitEntry::new).collect::<Result<_, _>>()?,
+            remarks: stage.remarks.clone(),
         };
         let Stage::Filter(filter) = &placed.stage else { return Ok(entry) };
         Ok(StageEntry {
             family: Some(filter.family.name().to_owned()),
-            order: Some(filter.order),
+            order: stage.recipe.order(),
             ripple_db: filter.ripple_db.map(Finite::try_from).transpose()?,
             stop_db: filter.stop_db.map(Finite::try_from).transpose()?,
             ..entry
+        })
+    }
+}
+
+impl LimitEntry {
+    /// # Errors
+    /// A figure is NaN or infinite.
+    fn new(slack: &Slack) -> Result<Self, NotFinite> {
+        Ok(LimitEntry {
+            edge: if slack.is_stop { LimitEdge::Stop } else { LimitEdge::Pass },
+            at_hz: slack.at_hz.try_into()?,
+            limit_db: slack.limit_db.try_into()?,
+            slack_db: slack.slack_db.try_into()?,
         })
     }
 }
@@ -293,6 +353,11 @@ impl From<Check> for CheckResult {
             Check::Impossible => CheckResult::Impossible,
         }
     }
+}
+
+/// `value` to three significant digits.
+fn three_digits(value: f64) -> f64 {
+    format!("{value:.2e}").parse().unwrap_or(value)
 }
 
 /// [`Section`] holds bare `f64`, for which serde_json would write null.

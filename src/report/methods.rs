@@ -5,14 +5,16 @@
 //! 10.1016/j.jneumeth.2014.08.002: type and kind, edges and what they mean, order,
 //! transition widths, ripple and attenuation, delay, causality, direction.
 
+mod phase;
 mod sentence;
+mod ways;
 
 use super::{Db, Finite, Hz, NotFinite, Require, Seconds, schema};
-use crate::design::sections::{self, StageSize};
+use crate::design::sections::StageSize;
 use crate::design::transition::{self, Transition};
-use crate::design::{BandDesign, Design, PlacedStage};
+use crate::design::{BandDesign, Design, DesignedStage};
 use crate::section::Section;
-use crate::spec::{self, Family, Stage};
+use crate::spec::{self, Family, Order, Stage};
 use schemars::JsonSchema;
 use serde::{Deserialize, Serialize};
 
@@ -31,23 +33,27 @@ pub struct Methods {
     pub rate_hz: u32,
     /// How the filter was designed; null for the identity.
     pub design: Option<String>,
-    /// Poles of the whole cascade: the total orders of all stages and lines added up. Its
-    /// attenuation in dB is the sum of theirs.
+    /// Poles of the whole cascade in one pass: the total orders of all stages and lines added
+    /// up. Its attenuation in dB is the sum of theirs.
     pub total_order: u32,
     /// Sections of second order or less in the whole cascade.
     pub sections: usize,
     /// How often the cascade runs over the samples.
     #[schemars(range(min = 1))]
     pub passes: u32,
-    /// Direction of the passes: `forward`.
+    /// Direction of the passes: `forward`, or `forward and backward`.
     pub direction: String,
     /// Whether no output sample depends on a later input sample.
     pub causal: bool,
-    /// `non-linear`: the group delay depends on frequency; `zero` for the identity.
+    /// `non-linear`: the group delay depends on frequency; `linear` where it does not, for an
+    /// impulse response that ends and mirrors itself; `zero` for two passes, forward and
+    /// backward, and for the identity.
     pub phase: String,
-    /// State before the first sample; null for the identity and where `applied` is false.
+    /// State before the first sample, of each pass; null for the identity and where `applied`
+    /// is false.
     pub start_state: Option<String>,
-    /// Seconds until the tail of the impulse response no longer matters, as in the design.
+    /// Seconds until the tail of the impulse response no longer matters, as in the design; with
+    /// two passes on both sides.
     #[schemars(extend("minimum" = 0))]
     pub settling_s: Seconds,
     /// Number format and structure of the sections; null where `start_state` is.
@@ -82,11 +88,13 @@ pub struct MethodsStage {
     pub total_order: u32,
     /// Sections of one line.
     pub sections: u32,
-    /// What an edge is.
-    pub edge_definition: EdgeDefinition,
-    /// Ripple of the pass band, dB; null for families without.
+    /// What an edge is; null for a peak, a shelf, a weighting and a transfer function.
+    pub edge_definition: Option<EdgeDefinition>,
+    /// Ripple of the pass band, dB; null for families without, unless the order was found
+    /// from limits.
     pub ripple_db: Option<Finite>,
-    /// Attenuation of the stop band, dB; null for families without.
+    /// Attenuation of the stop band, dB; null for families without, unless the order was
+    /// found from limits.
     pub stop_db: Option<Finite>,
     /// The lines of the row that fit at this sample rate; one for a stage that is no row.
     pub lines: Vec<MethodsLine>,
@@ -98,7 +106,8 @@ pub struct MethodsStage {
 pub enum EdgeDefinition {
     /// The response is down to half the power, 3.01 dB: Butterworth, Bessel, notch.
     HalfPower,
-    /// The ripple of the pass band ends: Chebyshev I, elliptic.
+    /// The ripple of the pass band ends: Chebyshev I, elliptic, and any family where the order
+    /// was found from limits.
     RippleEnds,
     /// The stop band begins: Chebyshev II.
     StopBegins,
@@ -112,8 +121,9 @@ pub struct MethodsLine {
     #[schemars(range(min = 1))]
     pub line: Option<u32>,
     /// One edge, or the lower and the upper, Hz, as designed for; a notch: half its width
-    /// below and above the center.
-    #[schemars(length(min = 1, max = 2))]
+    /// below and above the center. The frequency of a peak or shelf; none for a weighting or
+    /// a transfer function.
+    #[schemars(length(max = 2))]
     pub edges_hz: Vec<Hz>,
     /// From pass band to stop band at each of the edges, from the exact response of this
     /// line alone.
@@ -173,24 +183,30 @@ impl Methods {
         let stages = stages(design)?;
         let identity = design.stages.is_empty();
         let runs = dither.is_some() && !identity;
-        let lines = design.stages.iter().map(|placed| sections::size(&placed.stage).total_order);
+        let both_ways = design.passes > 1;
+        let lines = design.stages.iter().map(|stage| stage.size.total_order);
         let mut methods = Methods {
             sentence: String::new(),
             program: concat!("bandproof ", env!("CARGO_PKG_VERSION")).to_owned(),
             applied: dither.is_some(),
             rate_hz: design.rate_hz,
-            design: (!identity).then(|| {
-                "analog prototypes (zeros, poles, gain), bilinear transform with edges prewarped (of a notch: center \
-                 and width), zeros paired with the nearest poles"
-                    .to_owned()
-            }),
+            design: (!identity).then(|| ways::described(design)),
             total_order: lines.fold(0, u32::saturating_add),
             sections: design.sections.len(),
-            passes: 1,
-            direction: "forward".to_owned(),
-            causal: true,
-            phase: if identity { "zero" } else { "non-linear" }.to_owned(),
-            start_state: runs.then(|| "steady state of the first sample, as if it had always been there".to_owned()),
+            passes: design.passes,
+            direction: if both_ways { "forward and backward" } else { "forward" }.to_owned(),
+            causal: !both_ways,
+            phase: if identity || both_ways { "zero" } else { phase::of_one_pass(&design.sections) }.to_owned(),
+            start_state: runs.then(|| {
+                if both_ways {
+                    "each pass from the steady state of the first sample it meets, the recording continued at both \
+                     ends by its own samples turned about the first and the last one (odd extension) for as long as \
+                     one pass rings"
+                } else {
+                    "steady state of the first sample, as if it had always been there"
+                }
+                .to_owned()
+            }),
             settling_s: design.settling_s.try_into()?,
             arithmetic: runs.then(|| {
                 "64-bit floating point (IEEE 754 double precision), each operation rounded once, transposed direct \
@@ -210,31 +226,30 @@ impl Methods {
 fn stages(design: &Design) -> Result<Vec<MethodsStage>, NotFinite> {
     let mut stages: Vec<MethodsStage> = Vec::new();
     let mut rest = design.sections.as_slice();
-    for placed in &design.stages {
-        let StageSize { sections, .. } = sections::size(&placed.stage);
-        let count = usize::try_from(sections).unwrap_or(usize::MAX).min(rest.len());
+    for stage in &design.stages {
+        let count = usize::try_from(stage.size.sections).unwrap_or(usize::MAX).min(rest.len());
         let (own, after) = rest.split_at(count);
         rest = after;
-        let line = MethodsLine::new(placed, own, design)?;
+        let line = MethodsLine::new(stage, own, design)?;
         match stages.last_mut() {
-            Some(last) if last.stage == placed.stage_index + 1 => last.lines.push(line),
-            _ => stages.push(MethodsStage::new(placed, line)?),
+            Some(last) if last.stage == stage.placed.stage_index + 1 => last.lines.push(line),
+            _ => stages.push(MethodsStage::new(stage, line)?),
         }
     }
     Ok(stages)
 }
 
 impl MethodsStage {
-    fn new(placed: &PlacedStage, line: MethodsLine) -> Result<Self, NotFinite> {
-        let StageSize { total_order, sections } = sections::size(&placed.stage);
+    fn new(designed: &DesignedStage, line: MethodsLine) -> Result<Self, NotFinite> {
+        let DesignedStage { placed, size: StageSize { total_order, sections }, .. } = designed;
         let stage = MethodsStage {
             stage: placed.stage_index + 1,
             kind: placed.stage.kind_name().to_owned(),
             family: None,
             order: None,
-            total_order,
-            sections,
-            edge_definition: EdgeDefinition::HalfPower,
+            total_order: *total_order,
+            sections: *sections,
+            edge_definition: matches!(placed.stage, Stage::Notch(_)).then_some(EdgeDefinition::HalfPower),
             ripple_db: None,
             stop_db: None,
             lines: vec![line],
@@ -242,8 +257,11 @@ impl MethodsStage {
         let Stage::Filter(filter) = &placed.stage else { return Ok(stage) };
         Ok(MethodsStage {
             family: Some(filter.family.name().to_owned()),
-            order: Some(filter.order),
-            edge_definition: filter.family.into(),
+            order: designed.recipe.order(),
+            edge_definition: Some(match filter.order {
+                Order::Given(_) => filter.family.into(),
+                Order::Limits(_) => EdgeDefinition::RippleEnds,
+            }),
             ripple_db: filter.ripple_db.map(Finite::try_from).transpose()?,
             stop_db: filter.stop_db.map(Finite::try_from).transpose()?,
             ..stage
@@ -262,9 +280,11 @@ impl From<Family> for EdgeDefinition {
 }
 
 impl MethodsLine {
-    /// `own` are the sections of this line.
-    fn new(placed: &PlacedStage, own: &[Section], design: &Design) -> Result<Self, NotFinite> {
-        let transitions = transition::transitions(placed, own, f64::from(design.rate_hz), &design.bands);
+    /// `own` are the sections of one pass of this line.
+    fn new(stage: &DesignedStage, own: &[Section], design: &Design) -> Result<Self, NotFinite> {
+        let placed = &stage.placed;
+        let net = own.repeat(design.passes as usize);
+        let transitions = transition::transitions(placed, &net, f64::from(design.rate_hz), &design.bands);
         Ok(MethodsLine {
             line: placed.harmonic,
             edges_hz: placed.edges_hz.iter().map(|&hz| hz.try_into()).collect::<Result<_, _>>()?,

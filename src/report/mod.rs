@@ -7,6 +7,7 @@
 //! Nothing is measured or judged here: [`Summary`] counts verdicts that others gave.
 
 mod band_entry;
+pub mod curve;
 mod design_entry;
 mod head;
 mod highlights;
@@ -22,8 +23,10 @@ mod table;
 mod writer;
 
 pub use band_entry::{BandEntry, ReasonCode, Require, Verdict};
+pub use curve::CurveError;
 pub use design_entry::{
-    CheckResult, DesignBand, DesignEntry, LeftOutEntry, StageEntry, ViolationEntry, WitnessBand, WitnessEntry,
+    CheckResult, DesignBand, DesignEntry, LeftOutEntry, LimitEdge, LimitEntry, StageEntry, ViolationEntry, WitnessBand,
+    WitnessEntry,
 };
 pub use head::{FORMAT, Head, LEVEL_REFERENCE, REPORT_NAME, Run, SpecEntry};
 pub use highlights::{FailedItem, FarthestItem, Highlights, MOST_NAMED, MissedItem, PairsItem, UnprovenItem};

@@ -129,7 +129,8 @@ pub struct SpectrumEntry {
     pub segments: usize,
     /// Distance of two bins, Hz.
     pub bin_hz: Hz,
-    /// Seconds left out at the start.
+    /// Seconds left out at the start. Where the design has two passes, its `settling_s` is left
+    /// out at the end as well.
     #[schemars(extend("minimum" = 0))]
     pub skipped_s: Seconds,
 }

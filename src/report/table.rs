@@ -60,7 +60,7 @@
 //! | `segment_frames` | length of a segment | likewise |
 //! | `segments` | segments averaged | likewise |
 //! | `bin_hz` | distance of two bins | likewise |
-//! | `skipped_s` | what was left out at the start | likewise |
+//! | `skipped_s` | what was left out at the start (with two passes, at the end as well) | likewise |
 //! | `channel` | 1 for the first | failed; no bands |
 //! | `reference_gain_db` | this channel's gain in the reference band, counted as 0 dB (`measure`) | no reference band |
 //! | `band` | name of the band | failed; no bands |

@@ -1,7 +1,8 @@
 //! From the program's own results to the report's entries.
 
 use crate::samples::{finite, hz};
-use bandproof::design::{BandDesign, Check, Design, LeftOut, PlacedStage, Violation};
+use bandproof::design::sections::StageSize;
+use bandproof::design::{BandDesign, Check, Design, DesignedStage, LeftOut, PlacedStage, Violation, recipe};
 use bandproof::evidence::{self, BandFigures, BandTask};
 use bandproof::report::*;
 use bandproof::section::Section;
@@ -31,12 +32,18 @@ fn stage(kind: FilterKind, order: u32) -> PlacedStage {
     let stage = Stage::Filter(FilterStage {
         kind,
         family: Family::Chebyshev2,
-        order,
+        order: Order::Given(order),
         placement: Placement::Edge { edge_hz: 40.0 },
         ripple_db: None,
         stop_db: Some(60.0),
     });
     PlacedStage { stage_index: 0, stage, harmonic: None, edges_hz: vec![40.0] }
+}
+
+fn designed(placed: PlacedStage, total_order: u32, sections: u32) -> DesignedStage {
+    let recipe = recipe::recipe(&placed, Phase::Causal, 48_000.0).unwrap();
+    let size = StageSize { total_order, sections };
+    DesignedStage { placed, recipe, size, slack: Vec::new(), remarks: Vec::new() }
 }
 
 fn design() -> Design {
@@ -50,9 +57,16 @@ fn design() -> Design {
     Design {
         rate_hz: 48_000,
         left_out: vec![LeftOut { what: "band \"whine\"".to_owned(), reason: "too high".to_owned() }],
-        stages: vec![stage(FilterKind::Highpass, 5), stage(FilterKind::Bandstop, 3), notch],
+        stages: vec![
+            designed(stage(FilterKind::Highpass, 5), 5, 3),
+            designed(stage(FilterKind::Bandstop, 3), 6, 3),
+            designed(notch, 2, 1),
+        ],
         sections: vec![Section { b: [1.0, 0.0, 0.0], a: [1.0, -0.5, 0.0] }],
+        passes: 1,
         max_pole_radius: 0.5,
+        rounding_db: 1.234_5e-9,
+        rounding_at_hz: 15_931.7,
         settling_s: 2.2,
         settling_frames: 105_600,
         bands: vec![design_band()],
@@ -64,6 +78,7 @@ fn a_design_becomes_its_entry() {
     let entry = DesignEntry::new(&design(), "triangular-1", None).unwrap();
     assert_eq!((entry.rate_hz, entry.passes, entry.dither.as_str()), (48_000, 1, "triangular-1"));
     assert_eq!((entry.left_out[0].what.as_str(), entry.left_out[0].reason.as_str()), ("band \"whine\"", "too high"));
+    assert_eq!((entry.rounding_db.get(), entry.rounding_at_hz.map(Hz::get)), (1.23e-9, Some(15_931.7)));
     let orders: Vec<_> = entry.stages.iter().map(|s| (s.stage, s.order, s.total_order, s.sections)).collect();
     assert_eq!(orders, [(1, Some(5), 5, 3), (1, Some(3), 6, 3), (2, None, 2, 1)]);
     assert_eq!((entry.stages[0].kind.as_str(), entry.stages[0].family.as_deref()), ("highpass", Some("chebyshev2")));
@@ -97,6 +112,7 @@ fn a_design_that_is_not_finite_is_refused() {
     for spoilt in [
         Design { settling_s: f64::INFINITY, ..design() },
         Design { max_pole_radius: f64::NAN, ..design() },
+        Design { rounding_db: f64::INFINITY, ..design() },
         Design { bands: vec![BandDesign { attenuation_min_db: f64::NAN, ..design_band() }], ..design() },
     ] {
         assert!(DesignEntry::new(&spoilt, "none", None).is_err());

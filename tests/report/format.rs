@@ -25,14 +25,16 @@ mirror! {
     Spec { title: Option<String>, file_sha256: String, normalized: serde_json::Value }
     Design {
         rate_hz: u32, left_out: Vec<LeftOut>, stages: Vec<Stage>, sections: Vec<Section>, passes: u32,
-        settling_s: f64, max_pole_radius: f64, dither: String, bands: Vec<DesignBand>, witness: Option<Witness>,
-        methods: Methods,
+        settling_s: f64, max_pole_radius: f64, rounding_db: f64, rounding_at_hz: Option<f64>, dither: String,
+        bands: Vec<DesignBand>, witness: Option<Witness>, methods: Methods,
     }
     LeftOut { what: String, reason: String }
     Stage {
         stage: u32, line: Option<u32>, kind: String, family: Option<String>, order: Option<u32>, total_order: u32,
-        sections: u32, edges_hz: Vec<f64>, ripple_db: Option<f64>, stop_db: Option<f64>,
+        sections: u32, edges_hz: Vec<f64>, ripple_db: Option<f64>, stop_db: Option<f64>, limits: Vec<Limit>,
+        remarks: Vec<String>,
     }
+    Limit { edge: String, at_hz: f64, limit_db: f64, slack_db: f64 }
     Section { b: [f64; 3], a: [f64; 3] }
     DesignBand {
         name: String, from_hz: f64, to_hz: f64, require: Option<BTreeMap<String, f64>>, attenuation_min_db: f64,
@@ -51,7 +53,7 @@ mirror! {
     }
     MethodsStage {
         stage: u32, kind: String, family: Option<String>, order: Option<u32>, total_order: u32, sections: u32,
-        edge_definition: String, ripple_db: Option<f64>, stop_db: Option<f64>, lines: Vec<MethodsLine>,
+        edge_definition: Option<String>, ripple_db: Option<f64>, stop_db: Option<f64>, lines: Vec<MethodsLine>,
     }
     MethodsLine { line: Option<u32>, edges_hz: Vec<f64>, transitions: Vec<Transition> }
     Transition {
@@ -129,6 +131,9 @@ fn every_key_is_known_and_every_known_key_is_there() {
     let design = &report.designs[0];
     assert_eq!(design.sections[0].a[2], 0.1 + 0.2, "coefficients come back as the same bits");
     assert_eq!(design.bands[0].check.as_deref(), Some("guaranteed"));
+    let limits: Vec<_> = design.stages[0].limits.iter().map(|one| (one.edge.as_str(), one.at_hz)).collect();
+    assert_eq!(limits, [("pass", 48.4), ("pass", 51.6), ("stop", 49.5), ("stop", 50.5)]);
+    assert_eq!(design.stages[0].remarks, ["a remark on this stage"]);
     let entry = &report.recordings[0];
     assert_eq!((entry.path.as_str(), entry.status.as_str()), ("station-a/0512.wav", "done"));
     let spectrum = entry.spectrum.as_ref().unwrap();
@@ -147,7 +152,7 @@ fn every_key_is_known_and_every_known_key_is_there() {
     assert_eq!((report.summary.done, report.summary.failed), (2, 1));
     assert!(report.summary.unpaired.is_none());
     let methods = &design.methods;
-    assert_eq!((methods.applied, methods.stages[0].edge_definition.as_str()), (true, "ripple-ends"));
+    assert_eq!((methods.applied, methods.stages[0].edge_definition.as_deref()), (true, Some("ripple-ends")));
     assert_eq!(methods.stages[0].lines[0].transitions[1].width_hz, Some(1.17));
     assert_eq!(report.summary.verdict, "unproven");
 }
@@ -161,7 +166,8 @@ fn keys(value: &serde_json::Value) -> Vec<&str> {
 fn keys_stand_in_their_fixed_order() {
     let report: serde_json::Value = serde_json::from_slice(&samples::written(&spec(), &recordings())).unwrap();
     let top = "report format tool_version level_reference run complete spec designs recordings summary";
-    let design = "rate_hz left_out stages sections passes settling_s max_pole_radius dither bands witness methods";
+    let design = "rate_hz left_out stages sections passes settling_s max_pole_radius rounding_db rounding_at_hz dither \
+                  bands witness methods";
     let methods = "sentence program applied rate_hz design total_order sections passes direction causal phase \
                    start_state settling_s arithmetic dither stages bands";
     let stage = "stage kind family order total_order sections edge_definition ripple_db stop_db lines";
@@ -182,6 +188,11 @@ fn keys_stand_in_their_fixed_order() {
         (&report["run"], "started seconds jobs witness_deviation"),
         (&report["spec"], "title file_sha256 normalized"),
         (&report["designs"][0], design),
+        (
+            &report["designs"][0]["stages"][0],
+            "stage line kind family order total_order sections edges_hz ripple_db stop_db limits remarks",
+        ),
+        (&report["designs"][0]["stages"][0]["limits"][0], "edge at_hz limit_db slack_db"),
         (&report["designs"][0]["bands"][0], design_band),
         (&report["designs"][0]["methods"], methods),
         (&report["designs"][0]["methods"]["stages"][0], stage),

@@ -4,6 +4,7 @@
 mod builders;
 mod format;
 mod layout;
+mod limits;
 mod methods;
 mod samples;
 mod sentences;

@@ -148,7 +148,7 @@ fn each_family_says_what_its_edges_are() {
                 let design = designed(&one_stage(&stage, "from_hz = 1\nto_hz = 2"), 48_000);
                 let methods = methods(&design);
                 let [stage] = methods.stages.as_slice() else { panic!("one stage") };
-                assert_eq!(stage.edge_definition, definition);
+                assert_eq!(stage.edge_definition, Some(definition));
                 assert_eq!((stage.family.as_deref(), stage.order), (Some(family), Some(order)));
                 let [line] = stage.lines.as_slice() else { panic!("one line") };
                 assert_eq!(line.edges_hz.len(), line.transitions.len());
@@ -224,7 +224,7 @@ fn a_notch_has_its_width_between_its_real_half_power_points() {
         let [stage] = methods.stages.as_slice() else { panic!("one stage") };
         assert_eq!(
             (stage.edge_definition, stage.family.as_deref(), stage.order),
-            (EdgeDefinition::HalfPower, None, None)
+            (Some(EdgeDefinition::HalfPower), None, None)
         );
         let [low, high] = stage.lines[0].transitions.as_slice() else { panic!("two edges") };
         let found_hz = high.pass_hz.unwrap().get() - low.pass_hz.unwrap().get();

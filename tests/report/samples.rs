@@ -2,7 +2,7 @@
 
 use bandproof::report::*;
 use bandproof::section::Section;
-use bandproof::spec::{Band, BeyondHalfRate, Extent, OutputSpec, Requirement, Spec};
+use bandproof::spec::{Band, BeyondHalfRate, Extent, OutputSpec, Phase, Requirement, Spec};
 
 pub fn db(value: f64) -> Option<Db> {
     Db::new(value)
@@ -27,6 +27,8 @@ pub fn reduce(limit: f64) -> Option<Require> {
 /// A spec of single bands.
 pub fn spec(bands: &[(&str, Requirement)]) -> Spec {
     Spec {
+        phase: Phase::Causal,
+        auto: None,
         reference_band: None,
         rate: None,
         title: None,
@@ -195,7 +197,7 @@ fn methods() -> Methods {
             order: Some(1),
             total_order: 2,
             sections: 1,
-            edge_definition: EdgeDefinition::RippleEnds,
+            edge_definition: Some(EdgeDefinition::RippleEnds),
             ripple_db: Some(finite(0.1)),
             stop_db: Some(finite(40.0)),
             lines: vec![MethodsLine {
@@ -214,6 +216,10 @@ fn methods() -> Methods {
             group_delay_s: None,
         }],
     }
+}
+
+fn limit(edge: LimitEdge, at_hz: f64, limit_db: f64, slack_db: f64) -> LimitEntry {
+    LimitEntry { edge, at_hz: hz(at_hz), limit_db: finite(limit_db), slack_db: Db::new(slack_db).unwrap() }
 }
 
 pub fn design() -> DesignEntry {
@@ -235,11 +241,20 @@ pub fn design() -> DesignEntry {
             edges_hz: vec![hz(48.4), hz(51.6)],
             ripple_db: Some(finite(0.1)),
             stop_db: Some(finite(40.0)),
+            limits: vec![
+                limit(LimitEdge::Pass, 48.4, 0.1, 0.0),
+                limit(LimitEdge::Pass, 51.6, 0.1, 0.0),
+                limit(LimitEdge::Stop, 49.5, 40.0, 0.125),
+                limit(LimitEdge::Stop, 50.5, 40.0, 0.25),
+            ],
+            remarks: vec!["a remark on this stage".to_owned()],
         }],
         sections: vec![Section { b: [1.0, -1.99, 1.0], a: [1.0, -1.98, 0.1 + 0.2] }],
         passes: 1,
         settling_s: seconds(2.2),
         max_pole_radius: finite(0.99987),
+        rounding_db: finite(3.1e-9),
+        rounding_at_hz: Some(hz(51.6)),
         dither: "triangular-1".to_owned(),
         bands: vec![DesignBand {
             name: "pump hum x1".to_owned(),

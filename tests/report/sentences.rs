@@ -73,6 +73,26 @@ fn a_row_of_bands_that_are_kept() {
     check("kept rows", &designed(&[LOWPASS, rows].concat(), 48_000), "none");
 }
 
+/// Of every kind, each of another family.
+#[test]
+fn orders_that_follow_from_limits() {
+    let limits = |kind: &str, family: &str, edges: &str| {
+        format!("[[stage]]\nkind = \"{kind}\"\nfamily = \"{family}\"\nripple_db = 0.25\nstop_db = 48\n{edges}\n")
+    };
+    let one_edge = [
+        limits("lowpass", "butterworth", "edge_hz = 3000\nstop_edge_hz = 4500"),
+        limits("highpass", "bessel", "edge_hz = 60\nstop_edge_hz = 4"),
+    ];
+    check("limits of one edge", &designed(&one_edge.concat(), 48_000), "none");
+    let two_edges = [
+        limits("bandpass", "chebyshev2", "edges_hz = [90, 6000]\nstop_edges_hz = [60.5, 9000]"),
+        limits("bandstop", "elliptic", "edges_hz = [47, 53]\nstop_edges_hz = [49, 51]"),
+    ];
+    check("limits of two edges", &designed(&two_edges.concat(), 48_000), "none");
+    let moved = limits("bandstop", "elliptic", "edges_hz = [45, 60]\nstop_edges_hz = [49, 51]");
+    check("a moved edge", &designed(&moved, 48_000), "none");
+}
+
 /// A reduce band that reaches into the pass band, and a keep band with a stop in it.
 #[test]
 fn bands_that_are_met_in_part() {
@@ -81,6 +101,33 @@ fn bands_that_are_met_in_part() {
     let line = "[[band]]\nname = \"line\"\nfrom_hz = 59.9\nto_hz = 60.1\nreduce_db = 20\n";
     check("in part", &designed(&[STOP, hum].concat(), 48_000), "none");
     check("excepted", &designed(&[ROW, kept, line].concat(), 48_000), "none");
+}
+
+#[test]
+fn two_passes_are_told_with_what_their_figures_mean() {
+    let spec = ["phase = \"zero\"\n", STOP, ROW, HUM, SEEN].concat();
+    let applied = Methods::new(&designed(&spec, 48_000), Some("triangular-1")).unwrap();
+    for told in [
+        "in two passes, forward and backward (zero phase, not causal; orders are those of one pass, all other figures \
+         those of both together), through a Chebyshev type II high-pass of order 6",
+        "The filter (total order 16 in 8 second-order sections in each pass) was designed",
+        "from the steady state of the first sample of each pass, with the recording continued at both ends by its own \
+         samples turned about the first and the last one, and settled within",
+        " s of either end; by its exact response it took at least",
+        "passed \"voices\" (300 to 2000 Hz) with gains from -180 or less to 0 dB; integer output",
+    ] {
+        assert!(applied.sentence.contains(told), "{told:?} in {}", applied.sentence);
+    }
+    assert!(!applied.sentence.contains("delay"), "{}", applied.sentence);
+    let found = Methods::new(&designed(&spec, 48_000), None).unwrap();
+    let told = "a zero-phase IIR filter, not causal, that runs forward and backward (total order 16 in 8 second-order \
+                sections in each pass; orders are those of one pass, all other figures those of both together): a \
+                Chebyshev";
+    assert!(found.sentence.contains(told), "{told:?} in {}", found.sentence);
+    assert_eq!((found.passes, found.direction.as_str(), found.causal), (2, "forward and backward", false));
+    assert_eq!((found.phase.as_str(), found.start_state), ("zero", None));
+    assert!(applied.start_state.is_some_and(|state| state.contains("odd extension")));
+    assert!(applied.bands.iter().all(|band| band.group_delay_s.is_none_or(|s| s.get() == 0.0)));
 }
 
 #[test]

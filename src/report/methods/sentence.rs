@@ -3,12 +3,17 @@
 //! Promises are rounded to the side on which they still hold, everything else to the
 //! nearest figure.
 
+mod curves;
 mod figures;
 mod promises;
 
-use super::{Methods, MethodsStage, MethodsTransition};
-use crate::design::{Design, PlacedStage};
-use crate::spec::{Family, FilterKind, FilterStage, Placement, Row, Stage, Width};
+use super::{Methods, MethodsStage, MethodsTransition, phase, ways};
+use crate::design::recipe::Recipe;
+use crate::design::{Design, DesignedStage, limits};
+use crate::spec::{
+    AnalogStage, DigitalFilter, Family, FilterKind, FilterStage, Order, Placement, Row, Stage, StopEdges, Transfer,
+    Width,
+};
 use figures::{hertz, listed, nearest, rate, span};
 
 /// The sentence for `design`, whose fields `methods` holds already.
@@ -27,18 +32,33 @@ pub fn sentence(methods: &Methods, design: &Design) -> String {
     let stages = stages(methods, design);
     if !methods.applied {
         let order = order(methods);
+        let response = if phase::is_finite(&design.sections) { "FIR" } else { "IIR" };
         return format!(
             "Recordings sampled at {rate} were measured in pairs with {program}, which filtered none of them itself, \
-             and held against the exact response of the filter that the spec describes, a causal IIR filter of {order} \
-             with non-linear phase: {stages}."
+             and held against the exact response of the filter that the spec describes, {}: {stages}.",
+            if methods.causal {
+                format!("a causal {response} filter of {order} with {} phase", methods.phase)
+            } else {
+                format!(
+                    "a zero-phase {response} filter, not causal, that runs forward and backward ({order} in each pass; \
+                     {BOTH_TOGETHER})"
+                )
+            }
         );
     }
+    let passes = if methods.causal {
+        format!("one forward pass (causal, with {} phase)", methods.phase)
+    } else {
+        format!("two passes, forward and backward (zero phase, not causal; {BOTH_TOGETHER}),")
+    };
     format!(
-        "Recordings sampled at {rate} were filtered with {program} in one forward pass (causal, with non-linear phase) \
-         through {stages}. {}",
+        "Recordings sampled at {rate} were filtered with {program} in {passes} through {stages}. {}",
         whole(methods, design)
     )
 }
+
+/// What the figures of two passes mean.
+const BOTH_TOGETHER: &str = "orders are those of one pass, all other figures those of both together";
 
 /// `total order 8 in 4 second-order sections`.
 fn order(methods: &Methods) -> String {
@@ -56,33 +76,26 @@ fn order(methods: &Methods) -> String {
 
 /// The second sentence: design, structure, start, delay, promises, dither.
 fn whole(methods: &Methods, design: &Design) -> String {
-    let prewarped = prewarped(design);
-    let done = [
-        format!("was designed from analog prototypes by the bilinear transform with {prewarped}"),
-        "ran in double precision in transposed direct form II from the steady state of the first sample".to_owned(),
-        format!("settled within {} s", figures::up(methods.settling_s.get(), 3)),
-    ];
+    let (start, settled, order) = if methods.causal {
+        ("from the steady state of the first sample", "", order(methods))
+    } else {
+        (
+            "from the steady state of the first sample of each pass, with the recording continued at both ends by its own \
+             samples turned about the first and the last one",
+            " of either end",
+            format!("{} in each pass", order(methods)),
+        )
+    };
+    let mut done = ways::clauses(design);
+    done.push(format!("ran in double precision in transposed direct form II {start}"));
+    done.push(format!("settled within {} s{settled}", figures::up(methods.settling_s.get(), 3)));
     let promised = promises::promises(methods, design);
     let dither = if methods.dither == "none" {
         "no dither was added".to_owned()
     } else {
         format!("integer output was rounded with triangular dither of two steps peak to peak ({})", methods.dither)
     };
-    format!("The filter ({}) {}{promised}; {dither}.", order(methods), listed(&done))
-}
-
-/// What of the stages keeps its place under the bilinear transform.
-fn prewarped(design: &Design) -> &'static str {
-    let is_notch = |placed: &PlacedStage| matches!(placed.stage, Stage::Notch(_));
-    let notches = design.stages.iter().filter(|placed| is_notch(placed)).count();
-    let edges = design.stages.iter().filter(|placed| !is_notch(placed)).map(|placed| placed.edges_hz.len()).sum();
-    match (edges, notches) {
-        (0, ..=1) => "prewarped center and width",
-        (0, _) => "prewarped centers and widths",
-        (1, 0) => "a prewarped edge",
-        (_, 0) => "prewarped edges",
-        _ => "prewarped edges, centers, and widths",
-    }
+    format!("The filter ({order}) {}{promised}; {dither}.", listed(&done))
 }
 
 /// All stages; equal ones in succession are told once.
@@ -90,8 +103,9 @@ fn stages(methods: &Methods, design: &Design) -> String {
     let mut phrases: Vec<(String, u32)> = Vec::new();
     for stage in &methods.stages {
         // The lines of a stage share what it was written as.
-        let Some(placed) = design.stages.iter().find(|placed| placed.stage_index + 1 == stage.stage) else { continue };
-        let phrase = phrase(stage, &placed.stage);
+        let mut of_design = design.stages.iter();
+        let Some(own) = of_design.find(|own| own.placed.stage_index + 1 == stage.stage) else { continue };
+        let phrase = phrase(stage, own, methods.rate_hz);
         match phrases.last_mut() {
             Some((last, times)) if *last == phrase => *times += 1,
             _ => phrases.push((phrase, 1)),
@@ -111,11 +125,45 @@ fn stages(methods: &Methods, design: &Design) -> String {
     }
 }
 
-fn phrase(stage: &MethodsStage, written: &Stage) -> String {
-    match written {
+fn phrase(stage: &MethodsStage, own: &DesignedStage, rate_hz: u32) -> String {
+    match &own.placed.stage {
         Stage::Notch(notch) => notch_phrase(stage, &notch.row),
-        Stage::Filter(filter) => filter_phrase(stage, filter),
+        Stage::Filter(filter) => filter_phrase(stage, own, filter, rate_hz),
+        Stage::Equalizer(equalizer) => curves::equalizer(equalizer),
+        Stage::Weighting(weighting) => curves::weighting(weighting.curve),
+        Stage::Digital(digital) => {
+            format!("a digital transfer function given {}", digital_form(stage, &digital.filter))
+        }
+        Stage::Analog(analog) => analog_phrase(stage, analog),
     }
+}
+
+/// `by its numerator and denominator (order 4)`.
+fn digital_form(stage: &MethodsStage, digital: &DigitalFilter) -> String {
+    match digital {
+        DigitalFilter::Transfer(transfer) => form(stage, transfer),
+        DigitalFilter::Sections(sections) if sections.len() == 1 => {
+            format!("as one section (order {})", stage.total_order)
+        }
+        DigitalFilter::Sections(sections) => format!("as {} sections (order {})", sections.len(), stage.total_order),
+    }
+}
+
+fn form(stage: &MethodsStage, transfer: &Transfer) -> String {
+    let form = match transfer {
+        Transfer::Polynomials { .. } => "numerator and denominator",
+        Transfer::Roots { .. } => "zeros, poles, and gain",
+    };
+    format!("by its {form} (order {})", stage.total_order)
+}
+
+fn analog_phrase(stage: &MethodsStage, analog: &AnalogStage) -> String {
+    let matched = match analog.match_hz {
+        Some(match_hz) => format!("matched at {} Hz", hertz(match_hz)),
+        None => "without prewarping".to_owned(),
+    };
+    let form = form(stage, &analog.transfer);
+    format!("an analog transfer function given {form}, brought to digital form by the bilinear transform {matched}")
 }
 
 fn notch_phrase(stage: &MethodsStage, row: &Row) -> String {
@@ -137,7 +185,7 @@ fn notch_phrase(stage: &MethodsStage, row: &Row) -> String {
     }
 }
 
-fn filter_phrase(stage: &MethodsStage, filter: &FilterStage) -> String {
+fn filter_phrase(stage: &MethodsStage, own: &DesignedStage, filter: &FilterStage, rate_hz: u32) -> String {
     let (family, kind) = (family(filter.family), kind(filter.kind));
     let row = match &filter.placement {
         Placement::Row(row) => Some(row),
@@ -145,10 +193,11 @@ fn filter_phrase(stage: &MethodsStage, filter: &FilterStage) -> String {
     };
     let two_edges = matches!(filter.kind, FilterKind::Bandpass | FilterKind::Bandstop);
     let many = row.and_then(|row| multiples(stage, row).map(|at| (row, at)));
+    let own_order = stage.order.unwrap_or(0);
     let order = match (two_edges, many.is_some()) {
-        (false, _) => format!("order {}", filter.order),
-        (true, false) => format!("prototype order {} (total order {})", filter.order, stage.total_order),
-        (true, true) => format!("prototype order {} (total order {} each)", filter.order, stage.total_order),
+        (false, _) => format!("order {own_order}"),
+        (true, false) => format!("prototype order {own_order} (total order {})", stage.total_order),
+        (true, true) => format!("prototype order {own_order} (total order {} each)", stage.total_order),
     };
     let (subject, edges) = match &many {
         Some((row, at)) => {
@@ -166,7 +215,12 @@ fn filter_phrase(stage: &MethodsStage, filter: &FilterStage) -> String {
             (format!("{article} {family} {kind} of {order}"), edges)
         }
     };
+    let stop_hz = match &filter.order {
+        Order::Given(_) => None,
+        Order::Limits(stop) => Some(stop),
+    };
     let meaning = match (filter.family, two_edges) {
+        _ if stop_hz.is_some() => limited_edges(own, filter, rate_hz),
         (Family::Butterworth | Family::Bessel, true) => "half-power points, -3.01 dB",
         (Family::Butterworth | Family::Bessel, false) => "half power, -3.01 dB",
         (Family::Chebyshev1 | Family::Elliptic, _) => "where the ripple ends",
@@ -174,12 +228,39 @@ fn filter_phrase(stage: &MethodsStage, filter: &FilterStage) -> String {
     };
     let mut parts = vec![format!("{edges} ({meaning})")];
     parts.extend(filter.ripple_db.map(|db| format!("a pass-band ripple of {} dB", nearest(db, 3))));
-    parts.extend(filter.stop_db.map(|db| format!("a stop-band attenuation of {} dB", nearest(db, 3))));
+    let from = stop_hz.map(|stop| stop_range(filter.kind, stop)).unwrap_or_default();
+    parts.extend(filter.stop_db.map(|db| format!("a stop-band attenuation of {} dB{from}", nearest(db, 3))));
     let transition = transition(stage, filter.stop_db);
     if !transition.is_empty() {
         parts.push(transition);
     }
-    format!("{subject} with {}", listed(&parts))
+    let found = if stop_hz.is_some() { ", the lowest that holds its limits," } else { "" };
+    format!("{subject}{found} with {}", listed(&parts))
+}
+
+/// What pass edges given as limits are. Of a band-stop one may have been moved toward the
+/// stop, and the ripple then ends before the edge as written.
+fn limited_edges(own: &DesignedStage, filter: &FilterStage, rate_hz: u32) -> &'static str {
+    match &own.recipe {
+        Recipe::Filter(recipe)
+            if limits::moved_edge(filter, &own.placed.edges_hz, recipe, f64::from(rate_hz)).is_some() =>
+        {
+            "within the ripple up to the first and from the second on"
+        }
+        _ => "where the ripple ends",
+    }
+}
+
+/// ` from 1500 Hz on`, ` up to 20 Hz`, ` up to 20 Hz and from 1500 Hz on`, ` from 48 to 52 Hz`.
+fn stop_range(kind: FilterKind, stop: &StopEdges) -> String {
+    match (kind, *stop) {
+        (FilterKind::Highpass, StopEdges::One(hz)) => format!(" up to {} Hz", hertz(hz)),
+        (_, StopEdges::One(hz)) => format!(" from {} Hz on", hertz(hz)),
+        (FilterKind::Bandpass, StopEdges::Two([low, high])) => {
+            format!(" up to {} Hz and from {} Hz on", hertz(low), hertz(high))
+        }
+        (_, StopEdges::Two([low, high])) => format!(" from {} to {} Hz", hertz(low), hertz(high)),
+    }
 }
 
 /// `the first 8 multiples of 50 Hz (50 to 400 Hz)`; `None` where there is one line only.

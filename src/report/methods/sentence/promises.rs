@@ -22,7 +22,8 @@ pub fn promises(methods: &Methods, design: &Design) -> String {
         let all = || row.iter().map(|(_, design)| *design);
         let least_db = all().map(|band| band.attenuation_min_db).fold(f64::INFINITY, f64::min);
         let largest_db = all().map(|band| band.attenuation_max_db).fold(f64::NEG_INFINITY, f64::max);
-        let delay = delay(row);
+        // Without phase there is none to tell.
+        let delay = if methods.causal { delay(row) } else { String::new() };
         let required = row.first().map(|(_, design)| &design.band.requirement);
         match required {
             Some(Requirement::Reduce { .. } | Requirement::Residual { .. }) if least_db >= CAP_DB => {
