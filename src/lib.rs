@@ -11,7 +11,7 @@
 //! each against what went in, and from [`spectrum`] on the way is the same. [`excite`]
 //! writes what to send through a device for that. [`package`] puts what others need
 //! around finished outputs, and [`recheck`] holds a dataset against its report, on request
-//! with the code of [`job`] once more.
+//! with the code of [`job`] once more. [`export`] hands the cascade itself to other programs.
 //!
 //! Nothing checks itself: `design`, `cascade`, and `spectrum` with `evidence` and `align`
 //! do not call one another.
@@ -30,6 +30,7 @@ pub mod cascade;
 pub mod design;
 pub mod evidence;
 pub mod excite;
+pub mod export;
 mod files;
 pub mod job;
 pub mod output;

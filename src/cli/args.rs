@@ -1,6 +1,7 @@
 //! What can be typed.
 
 use super::color::When;
+use bandproof::export::{Form, precision};
 use bandproof::job::pair::DEFAULT_MAX_DELAY_S;
 use bandproof::package::Emit;
 use clap::{Args, Parser, Subcommand};
@@ -20,9 +21,10 @@ pub struct Cli {
 const STATUSES: &str = "\
 Exit status:
   0    every recording done, no band missed
-  1    some band missed (with --strict: or unproven); recheck: something is not as the report says
+  1    some band missed (with --strict: or unproven); recheck: something is not as the report says;
+       export: a requirement holds less well with so few digits or bits
   2    command line, spec, report or folders wrong, or a requirement out of the filters' reach:
-       nothing was written
+       nothing was written, but the table of `design --csv` for the rates that have a design
   3    some recording could not be processed, or the report could not be written
   130  interrupted";
 
@@ -40,6 +42,8 @@ pub enum Command {
     Excite(ExciteArgs),
     /// Check that a dataset still is what its report says
     Recheck(RecheckArgs),
+    /// Print the cascade for other programs: JSON, C, Rust, NumPy, equations, integers
+    Export(ExportArgs),
     /// Print the JSON Schema of spec files or of reports
     Schema(SchemaArgs),
 }
@@ -101,6 +105,14 @@ pub struct DesignArgs {
     /// Sample rate; may be given more than once [default: 48000]
     #[arg(long, value_name = "HZ", value_parser = rate_hz, allow_negative_numbers = true)]
     pub rate: Vec<u32>,
+    /// Also write the response as a table, dense around each pole and exact at each edge: gain, phase,
+    /// group delay and limits; not over a file that exists
+    #[arg(long, value_name = "FILE")]
+    pub csv: Option<PathBuf>,
+    /// Also write the spec with every default filled in and the stages that were found to a new
+    /// file, .toml or .json
+    #[arg(long, value_name = "FILE")]
+    pub write: Option<PathBuf>,
     /// What every command takes.
     #[command(flatten)]
     pub common: CommonArgs,
@@ -209,6 +221,71 @@ pub struct RecheckArgs {
     pub common: CommonArgs,
 }
 
+/// `export`.
+#[derive(Debug, Args)]
+#[command(max_term_width = 100)]
+pub struct ExportArgs {
+    /// The spec file, .toml or .json
+    #[arg(value_name = "SPEC")]
+    pub spec: PathBuf,
+    /// Sample rate
+    #[arg(long, value_name = "HZ", value_parser = rate_hz, allow_negative_numbers = true)]
+    pub rate: u32,
+    /// As what
+    #[arg(long = "as", value_name = "FORM", value_enum)]
+    pub form: ExportForm,
+    /// Significant decimal digits of the coefficients, 1 to 17 [default: all; equation: the fewest
+    /// that hold every requirement]
+    #[arg(long, value_name = "N", value_parser = digits, allow_negative_numbers = true)]
+    pub digits: Option<u32>,
+    /// Word length of `fixed`, 8 to 32 [default: the shortest that holds every requirement]
+    #[arg(long, value_name = "N", value_parser = bits, allow_negative_numbers = true)]
+    pub bits: Option<u32>,
+    /// Threads to find stages with where the spec leaves them to the program [default: all cores]
+    #[arg(long, value_name = "N", value_parser = threads, allow_negative_numbers = true)]
+    pub jobs: Option<NonZeroUsize>,
+    /// Print the form and errors only: no progress
+    #[arg(long)]
+    pub quiet: bool,
+}
+
+impl ExportArgs {
+    /// Threads to use: as asked for, else one a core.
+    pub fn threads(&self) -> usize {
+        or_all_cores(self.jobs)
+    }
+}
+
+/// `--as`.
+#[derive(Clone, Copy, Debug, clap::ValueEnum)]
+pub enum ExportForm {
+    /// Sections in full, as in the report
+    Json,
+    /// A C99 file with a block function
+    C,
+    /// A Rust module with a block function
+    Rust,
+    /// A Python file with the array that SciPy's sosfilt takes
+    Numpy,
+    /// Difference equations, one line a section
+    Equation,
+    /// Integers of a given word length, with a scaling for each section
+    Fixed,
+}
+
+impl From<ExportForm> for Form {
+    fn from(form: ExportForm) -> Self {
+        match form {
+            ExportForm::Json => Form::Json,
+            ExportForm::C => Form::C,
+            ExportForm::Rust => Form::Rust,
+            ExportForm::Numpy => Form::Numpy,
+            ExportForm::Equation => Form::Equation,
+            ExportForm::Fixed => Form::Fixed,
+        }
+    }
+}
+
 /// `schema`.
 #[derive(Debug, Args)]
 #[command(max_term_width = 100)]
@@ -265,13 +342,30 @@ pub struct CommonArgs {
 impl CommonArgs {
     /// Threads to use: as asked for, else one a core.
     pub fn threads(&self) -> usize {
-        self.jobs.map_or_else(|| std::thread::available_parallelism().map_or(1, NonZeroUsize::get), NonZeroUsize::get)
+        or_all_cores(self.jobs)
     }
+}
+
+fn or_all_cores(jobs: Option<NonZeroUsize>) -> usize {
+    jobs.or_else(|| std::thread::available_parallelism().ok()).map_or(1, NonZeroUsize::get)
 }
 
 fn rate_hz(text: &str) -> Result<u32, String> {
     let expected = || format!("expected a whole number of hertz from 1 to {}, as 44100", u32::MAX);
     text.parse().ok().filter(|&rate_hz| rate_hz > 0).ok_or_else(expected)
+}
+
+fn digits(text: &str) -> Result<u32, String> {
+    whole(text, 1, precision::MOST_DIGITS, "significant digits")
+}
+
+fn bits(text: &str) -> Result<u32, String> {
+    whole(text, precision::FEWEST_BITS, precision::MOST_BITS, "bits")
+}
+
+fn whole(text: &str, least: u32, most: u32, unit: &str) -> Result<u32, String> {
+    let expected = || format!("expected a whole number of {unit} from {least} to {most}");
+    text.parse().ok().filter(|number| (least..=most).contains(number)).ok_or_else(expected)
 }
 
 fn finite(text: &str) -> Result<f64, String> {

@@ -4,17 +4,21 @@ use super::WIDTH;
 use super::color::{Palette, Style};
 use super::summary_text::required;
 use super::table::{Table, wrapped};
-use super::units::{seconds, trimmed};
+use super::units::{seconds, small, trimmed};
 use bandproof::design::check::CAP_DB;
 use bandproof::design::roots::landmarks;
-use bandproof::report::{CheckResult, Db, DesignEntry, Hz, StageEntry};
+use bandproof::report::{CheckResult, Db, DesignEntry, Hz, LimitEdge, StageEntry};
 use bandproof::section::Section;
+
+/// What rounding may do to a response before a reader has to know, dB.
+const WORTH_TELLING_DB: f64 = 1e-4;
 
 /// One design.
 pub fn text(design: &DesignEntry, palette: Palette) -> String {
     let parts = [
         left_out(design, palette),
         stages(design, palette),
+        limits(design, palette),
         sections(design, palette),
         settling(design),
         bands(design, palette),
@@ -63,12 +67,57 @@ fn stages(design: &DesignEntry, palette: Palette) -> String {
             total_order.to_string(),
             sections.to_string(),
             edges.join(" to "),
-            or_dash(stage.ripple_db.map(|db| trimmed(db.get(), 3))),
+            or_dash(stage.ripple_db.map(|db| small(db.get()))),
             or_dash(stage.stop_db.map(|db| trimmed(db.get(), 3))),
         ];
         table.row(cells.map(plain));
     }
     let note = "Order is that of the low-pass prototype, total that of the finished filter.";
+    let has_orders = design.stages.iter().any(|stage| stage.order.is_some());
+    let note = if has_orders { wrapped(note, 0, 0, WIDTH) } else { String::new() };
+    table.render(palette, 0, WIDTH) + &note + &remarks(design)
+}
+
+/// Remarks under the stage's number; lines of a row that share one have it once.
+fn remarks(design: &DesignEntry) -> String {
+    let mut told: Vec<(usize, &String)> = Vec::new();
+    for stage in &design.stages {
+        for remark in &stage.remarks {
+            if !told.contains(&(stage.stage, remark)) {
+                told.push((stage.stage, remark));
+            }
+        }
+    }
+    told.iter().map(|(number, remark)| wrapped(&format!("Stage {number}: {remark}."), 0, 2, WIDTH)).collect()
+}
+
+/// What is left of the limits of stages whose order was found from them.
+fn limits(design: &DesignEntry, palette: Palette) -> String {
+    let mut table =
+        Table::new([("Limit", false), ("edge", false), ("Hz", true), ("attenuation dB", false), ("slack dB", true)]);
+    let mut is_empty = true;
+    for stage in &design.stages {
+        for limit in &stage.limits {
+            is_empty = false;
+            let (edge, bound) = match limit.edge {
+                LimitEdge::Pass => ("pass", "at most"),
+                LimitEdge::Stop => ("stop", "at least"),
+            };
+            let cells = [
+                format!("{} {}", stage.stage, stage.kind),
+                edge.to_owned(),
+                hertz(limit.at_hz),
+                format!("{bound} {}", trimmed(limit.limit_db.get(), 3)),
+                format!("{:.3}", limit.slack_db.get()),
+            ];
+            table.row(cells.map(plain));
+        }
+    }
+    if is_empty {
+        return String::new();
+    }
+    let note = "The order is the lowest that holds these limits. Slack: how far the response stays on the right side of \
+                the limit, at its worst frequency from the edge on.";
     table.render(palette, 0, WIDTH) + &wrapped(note, 0, 0, WIDTH)
 }
 
@@ -114,10 +163,31 @@ fn settling(design: &DesignEntry) -> String {
     if design.sections.is_empty() {
         return String::new();
     }
+    let both_ways = design.passes > 1;
+    let passes = "They run forward and then backward: zero phase. Orders and sections are those of one pass, everything \
+                  else is that of both, twice the decibels of one.";
+    let passes = if both_ways { wrapped(passes, 0, 0, WIDTH) } else { String::new() };
     let line = format!(
-        "Settling takes {}; figures of recordings leave that out at the start. Largest pole radius {}.",
+        "Settling takes {}; figures of recordings leave that out at {}. Largest pole radius {}.",
         seconds(design.settling_s.get()),
+        if both_ways { "the start and at the end" } else { "the start" },
         trimmed(design.max_pole_radius.get(), 9),
+    );
+    passes + &wrapped(&line, 0, 0, WIDTH) + &rounding(design)
+}
+
+/// Only where it is more than nothing.
+fn rounding(design: &DesignEntry) -> String {
+    let (db, at_hz) = match design.rounding_at_hz {
+        Some(at_hz) if design.rounding_db.get() > WORTH_TELLING_DB => (design.rounding_db.get(), at_hz),
+        _ => return String::new(),
+    };
+    let line = format!(
+        "Rounding: the exact coefficients have more digits than f64 holds, and with these the response is up to {} dB \
+         off what the stages ask for (at {} Hz). A wider band, an edge farther from 0 Hz and half the rate, a lower \
+         order or a lower sample rate bring it nearer.",
+        trimmed(db, 5),
+        hertz(at_hz),
     );
     wrapped(&line, 0, 0, WIDTH)
 }
@@ -187,9 +257,12 @@ fn times(design: &DesignEntry, palette: Palette) -> String {
         ];
         table.row(cells.map(plain));
     }
-    let note = "Reached: where the requirement is met. Start-up: how long a steady line at the center is still heard. \
-                Shortest recording: what it takes to judge the band.";
-    table.render(palette, 0, WIDTH) + &wrapped(note, 0, 0, WIDTH)
+    let at_end = if design.passes > 1 { ", at the start and at the end" } else { "" };
+    let note = format!(
+        "Reached: where the requirement is met. Start-up: how long a steady line at the center is still heard{at_end}. \
+         Shortest recording: what it takes to judge the band."
+    );
+    table.render(palette, 0, WIDTH) + &wrapped(&note, 0, 0, WIDTH)
 }
 
 /// The sentence of its methods; it speaks of recordings as filtered, so it is not for a plan.
@@ -219,7 +292,16 @@ mod tests {
     fn design() -> DesignEntry {
         let stage = json!({
             "stage": 2, "line": 1, "kind": "bandstop", "family": "elliptic", "order": 3, "total_order": 6,
-            "sections": 3, "edges_hz": [58.0, 62.0], "ripple_db": 0.1, "stop_db": 40.0,
+            "sections": 3, "edges_hz": [58.0, 62.0], "ripple_db": 0.1, "stop_db": 40.0, "limits": [],
+            "remarks": ["each of the two passes has made-up figures, told at such a length that it takes a second line"],
+        });
+        let found = json!({
+            "stage": 3, "line": null, "kind": "lowpass", "family": "bessel", "order": 7, "total_order": 7,
+            "sections": 4, "edges_hz": [1000.0], "ripple_db": 0.5, "stop_db": 60.0, "remarks": [],
+            "limits": [
+                {"edge": "pass", "at_hz": 1000.0, "limit_db": 0.5, "slack_db": 0.0},
+                {"edge": "stop", "at_hz": 4000.5, "limit_db": 60.0, "slack_db": 3.214},
+            ],
         });
         let band = json!({
             "name": "generator x1", "from_hz": 59.5, "to_hz": 60.5, "require": {"reduce_db": 30.0},
@@ -236,14 +318,15 @@ mod tests {
         serde_json::from_value(json!({
             "rate_hz": 48_000,
             "left_out": [{"what": "stage 3, line 2 (28000 Hz)", "reason": "its upper edge is at 28500 Hz"}],
-            "stages": [stage],
+            "stages": [stage, found],
             "sections": [
                 {"b": [0.5, -1.0, 0.5], "a": [1.0, -1.2, 0.52]},
                 {"b": [1.992_161_414_429_491_5, -1.992_161_414_429_491_5, 0.0], "a": [1.0, -0.75, 0.125]},
                 {"b": [1.0, 0.0, 0.0], "a": [1.0, 0.5, 0.0]},
                 {"b": [1.0, 0.0, 0.0], "a": [1.0, 0.0, 0.0]},
             ],
-            "passes": 1, "settling_s": 1.73, "max_pole_radius": 0.999_930_801, "dither": "triangular-1",
+            "passes": 1, "settling_s": 1.73, "max_pole_radius": 0.999_930_801,
+            "rounding_db": 9.99e-5, "rounding_at_hz": 60.1, "dither": "triangular-1",
             "bands": [band, kept], "witness": null,
             "methods": {
                 "sentence": "Recordings were filtered with a filter of made-up figures, told at such a length that it \
@@ -265,6 +348,15 @@ mod tests {
     }
 
     #[test]
+    fn what_rounding_does_is_told_where_it_matters() {
+        assert!(!text(&design(), Palette::OFF).contains("Rounding"));
+        let mut design = design();
+        design.rounding_db = 2.51e-4.try_into().unwrap();
+        let text = text(&design, Palette::OFF).replace('\n', " ");
+        assert!(text.contains("the response is up to 0.00025 dB off what the stages ask for (at 60.1 Hz)."), "{text}");
+    }
+
+    #[test]
     fn coefficients_are_shown_in_full_and_in_little_room() {
         for value in [1.0 / 3.0, -1.999_999_999_999_999_8, -1.234_567_890_123_456_7e-9, 0.001, 9.999e-4, 0.0, 1e-300] {
             let text = coefficient(value);
@@ -280,6 +372,14 @@ mod tests {
         let text = text(&design, Palette::OFF);
         assert!(text.lines().all(|line| line.chars().count() <= WIDTH), "{text}");
         assert!(text.contains("guaranteed") && text.contains(".."), "{text}");
+    }
+
+    #[test]
+    fn orders_are_explained_where_there_are_any() {
+        let mut design = design();
+        assert!(text(&design, Palette::OFF).contains("Order is that of the low-pass prototype"));
+        design.stages.iter_mut().for_each(|stage| stage.order = None);
+        assert!(!text(&design, Palette::OFF).contains("prototype"));
     }
 
     #[test]

@@ -5,6 +5,7 @@ use super::args::ExciteArgs;
 use super::excite_text::{document, text};
 use super::exit::Exit;
 use super::interrupt::Interrupt;
+use super::pool::pool;
 use super::screen::{complain, print, print_document};
 use bandproof::excite::file::{Placing, check, save};
 use bandproof::excite::{ExciteError, Plan};
@@ -25,6 +26,10 @@ pub fn run(arguments: &ExciteArgs) -> Exit {
         complain(&format!("interrupts can't be listened for: {error}"));
         return Exit::Refused;
     }
+    let pool = match pool(arguments.common.threads()) {
+        Ok(pool) => pool,
+        Err(exit) => return exit,
+    };
     let placing = Placing {
         spec_path: Some(&arguments.spec),
         replace: arguments.replace,
@@ -32,7 +37,7 @@ pub fn run(arguments: &ExciteArgs) -> Exit {
         temporary: &|path| interrupt.temporary(path),
     };
     let result = check(&arguments.file, &placing)
-        .and_then(|()| Plan::new(&spec.spec, arguments.rate, arguments.seconds))
+        .and_then(|()| pool.install(|| Plan::new(&spec.spec, arguments.rate, arguments.seconds)))
         .and_then(|plan| save(&plan, &arguments.file, &placing).map(|saved| (plan, saved)));
     let (plan, saved) = match result {
         Ok(done) => done,

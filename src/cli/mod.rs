@@ -3,10 +3,12 @@
 mod args;
 mod color;
 mod design;
+mod design_found;
 mod design_text;
 mod excite;
 mod excite_text;
 mod exit;
+mod export;
 mod filter;
 mod interrupt;
 mod measure;
@@ -14,6 +16,7 @@ mod names;
 mod outcome;
 mod pairs_text;
 mod plan_text;
+mod pool;
 mod progress;
 mod recheck;
 mod recheck_text;
@@ -45,6 +48,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> Exit {
         Ok(Cli { command: Command::Measure(arguments) }) => measure::run(&arguments),
         Ok(Cli { command: Command::Excite(arguments) }) => excite::run(&arguments),
         Ok(Cli { command: Command::Recheck(arguments) }) => recheck::run(&arguments),
+        Ok(Cli { command: Command::Export(arguments) }) => export::run(&arguments),
         Ok(Cli { command: Command::Schema(arguments) }) => schema::run(&arguments),
         Err(answer) if answer.use_stderr() => {
             let text = answer.render().to_string();

@@ -4,7 +4,7 @@ use super::color::{Palette, Style};
 use super::exit::Exit;
 use super::table::{Table, wrapped};
 use super::units::{counted, seconds};
-use super::{WIDTH, design_text};
+use super::{WIDTH, design_found, design_text};
 use bandproof::job::{DryRun, FilterJob, Outcome, PlannedRecording};
 use bandproof::report::SpecEntry;
 use serde_json::{Value, json};
@@ -18,13 +18,17 @@ pub fn exit(plan: &DryRun) -> Exit {
 /// The plan as one JSON document.
 pub fn document(job: &FilterJob, outcome: &Outcome, plan: &DryRun) -> serde_json::Result<Value> {
     let recordings: Vec<_> = plan.recordings.iter().map(planned).collect();
-    Ok(json!({
+    let mut document = json!({
         "dry_run": true,
         "scanned": job.scan,
-        "spec": serde_json::to_value(SpecEntry::new(&job.spec)?)?,
+        "spec": serde_json::to_value(SpecEntry::new(&plan.spec)?)?,
         "designs": serde_json::to_value(&outcome.designs)?,
         "recordings": recordings,
-    }))
+    });
+    if let Some(found) = &outcome.found {
+        document["found"] = design_found::document(found)?;
+    }
+    Ok(document)
 }
 
 fn planned(recording: &PlannedRecording) -> Value {
@@ -41,7 +45,8 @@ fn planned(recording: &PlannedRecording) -> Value {
 
 /// The plan for people.
 pub fn text(job: &FilterJob, outcome: &Outcome, plan: &DryRun, palette: Palette) -> String {
-    let mut text = outcome.designs.iter().map(|design| design_text::text(design, palette)).collect::<String>();
+    let mut text = outcome.found.as_ref().map_or_else(String::new, |found| design_found::text(found, palette) + "\n");
+    text.extend(outcome.designs.iter().map(|design| design_text::text(design, palette)));
     // Paths stand last, where a long one stays whole and can be copied.
     let mut table = Table::new([("Rate Hz", true), ("length", true), ("recording", false)]);
     for recording in plan.recordings.iter().filter(|recording| !recording.fails && !recording.kept) {
@@ -117,6 +122,7 @@ mod tests {
         let outcome = Outcome {
             summary,
             highlights,
+            found: None,
             designs: vec![DesignEntry::new(&design, "triangular-1", None).unwrap()],
             report_path: None,
             table_path: None,
@@ -128,7 +134,10 @@ mod tests {
             not_done: 0,
             dry: None,
         };
-        let plan = DryRun { recordings: vec![planned("pier-1/0001.wav", None), planned("pier-2/0001.wav", problem)] };
+        let plan = DryRun {
+            spec: job.spec.clone(),
+            recordings: vec![planned("pier-1/0001.wav", None), planned("pier-2/0001.wav", problem)],
+        };
         (job, outcome, plan)
     }
 

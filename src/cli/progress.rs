@@ -11,6 +11,7 @@ use std::fmt::{self, Write};
 use std::io::{IsTerminal, stderr};
 use std::path::Path;
 use std::sync::Arc;
+use std::time::Duration;
 
 /// A line that counts finished bytes; failed recordings are named above it.
 pub struct Meter {
@@ -24,18 +25,8 @@ impl Meter {
     /// early once the user interrupts it; `left` says what comes of the run then. Complains
     /// where interrupts can't be listened for.
     pub fn new(quiet: bool, left: &'static str) -> Result<Self, Exit> {
-        let shown = !quiet && stderr().is_terminal();
-        let target = if shown { ProgressDrawTarget::stderr_with_hz(5) } else { ProgressDrawTarget::hidden() };
-        let bar = ProgressBar::with_draw_target(Some(0), target);
-        // A template that is wrong would only cost the line its looks.
-        if let Ok(style) = ProgressStyle::with_template("{wide_bar} {done}{pace}") {
-            bar.set_style(
-                style
-                    .with_key("done", |state: &ProgressState, out: &mut dyn Write| done(state, out).unwrap_or(()))
-                    .with_key("pace", |state: &ProgressState, out: &mut dyn Write| pace(state, out).unwrap_or(()))
-                    .progress_chars("=> "),
-            );
-        }
+        let bar = ProgressBar::with_draw_target(Some(0), target(quiet));
+        count_bytes(&bar);
         let interrupt = Arc::new(Interrupt::default());
         let line = bar.clone();
         interrupt.answer_with(move || {
@@ -48,10 +39,50 @@ impl Meter {
         Ok(Meter { bar, interrupt })
     }
 
+    /// From whatever the line said before to bytes.
+    fn count(&self) {
+        self.bar.disable_steady_tick();
+        count_bytes(&self.bar);
+    }
+
     /// Takes the line away.
     pub fn clear(&self) {
         self.bar.finish_and_clear();
     }
+}
+
+/// Runs `work`, which finds stages from bands, under a line that says so.
+pub fn finding<T>(quiet: bool, work: impl FnOnce() -> T) -> T {
+    let bar = ProgressBar::with_draw_target(None, target(quiet));
+    say_finding(&bar);
+    let result = work();
+    bar.finish_and_clear();
+    result
+}
+
+fn target(quiet: bool) -> ProgressDrawTarget {
+    let shown = !quiet && stderr().is_terminal();
+    if shown { ProgressDrawTarget::stderr_with_hz(5) } else { ProgressDrawTarget::hidden() }
+}
+
+/// A template that is wrong would only cost the line its looks.
+fn count_bytes(bar: &ProgressBar) {
+    if let Ok(style) = ProgressStyle::with_template("{wide_bar} {done}{pace}") {
+        bar.set_style(
+            style
+                .with_key("done", |state: &ProgressState, out: &mut dyn Write| done(state, out).unwrap_or(()))
+                .with_key("pace", |state: &ProgressState, out: &mut dyn Write| pace(state, out).unwrap_or(()))
+                .progress_chars("=> "),
+        );
+    }
+}
+
+/// Nobody knows how long that will be; the time so far shows that it goes on.
+fn say_finding(bar: &ProgressBar) {
+    if let Ok(style) = ProgressStyle::with_template("Finding filters from the bands, {elapsed}") {
+        bar.set_style(style);
+    }
+    bar.enable_steady_tick(Duration::from_secs(1));
 }
 
 fn done(state: &ProgressState, out: &mut dyn Write) -> fmt::Result {
@@ -77,12 +108,18 @@ fn reckon(done: u64, all: u64, elapsed_s: f64) -> Option<(f64, f64)> {
 }
 
 impl Progress for Meter {
+    fn finding(&self) {
+        say_finding(&self.bar);
+    }
+
     fn checking(&self, bytes: u64) {
+        self.count();
         self.bar.set_length(bytes);
         self.bar.reset_elapsed();
     }
 
     fn planned(&self, _recordings: u64, bytes: u64) {
+        self.count();
         self.bar.set_position(0);
         self.bar.set_length(bytes);
         // Designs and the witness came before; they say nothing of the pace.

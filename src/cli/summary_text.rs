@@ -3,7 +3,7 @@
 use super::color::{Palette, Style};
 use super::table::{Table, wrapped};
 use super::units::{bytes, counted, seconds, trimmed};
-use super::{WIDTH, names, pairs_text};
+use super::{WIDTH, design_found, names, pairs_text};
 use bandproof::job::Outcome;
 use bandproof::report::{
     BandSummary, Db, DesignBand, DesignEntry, Highlights, MissedItem, NotFinite, ReasonCode, Require, Summary,
@@ -20,6 +20,7 @@ pub fn text(spec: &Spec, outcome: &Outcome, palette: Palette) -> String {
     let requirements = requirements(spec).unwrap_or_default();
     let parts = [
         done(outcome),
+        outcome.found.as_ref().map_or(String::new(), |found| wrapped(&design_found::brief(found), 0, 0, WIDTH)),
         outcome.summary.unpaired.as_ref().map_or(String::new(), |one_sided| pairs_text::unpaired(one_sided, palette)),
         outcome.highlights.pairs.as_ref().map_or(String::new(), |pairs| pairs_text::alignment(pairs, palette)),
         bands(&outcome.summary, &requirements, palette),
@@ -321,7 +322,9 @@ fn startup(designs: &[DesignEntry], palette: Palette) -> String {
     if told.is_empty() {
         return String::new();
     }
-    let mut text = heading("At the start of each recording", Style::Heading, palette);
+    let both_ways = designs.iter().any(|design| design.passes > 1);
+    let ends = if both_ways { "At the start and the end of each recording" } else { "At the start of each recording" };
+    let mut text = heading(ends, Style::Heading, palette);
     for (line, rates) in told {
         // Most often it is the same at every rate.
         let at = if rates.len() == designs.len() { String::new() } else { format!(" (at {} Hz)", listed(&rates)) };
@@ -340,6 +343,7 @@ fn startup_lines(design: &DesignEntry) -> Vec<String> {
         Some(match row.iter().filter_map(|band| band.startup_s).map(|s| s.get()).reduce(f64::max) {
             // Gone within a frame: nothing to tell.
             Some(s) if s <= 0.0 => return None,
+            Some(s) if design.passes > 1 => format!("{name}: the first and the last {} carry it", seconds(s)),
             Some(s) => format!("{name}: the first {} still carry it", seconds(s)),
             None => format!("{name}: a steady line at its center never comes down as far as required"),
         })

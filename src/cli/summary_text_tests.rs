@@ -44,6 +44,7 @@ fn outcome(recordings: &[Recording], rates: &[u32]) -> Outcome {
     Outcome {
         summary,
         highlights,
+        found: None,
         designs: rates.iter().map(|&rate_hz| design(rate_hz)).collect(),
         report_path: Some("quiet/bandproof-report.json".into()),
         table_path: None,

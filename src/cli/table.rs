@@ -17,7 +17,7 @@ pub struct Table {
 
 impl Table {
     /// A table whose columns are `(header, whether it is set to the right)`.
-    pub fn new<const N: usize>(columns: [(&'static str, bool); N]) -> Self {
+    pub fn new(columns: impl IntoIterator<Item = (&'static str, bool)>) -> Self {
         let (headers, right) = columns.into_iter().unzip();
         Table { headers, right, rows: Vec::new() }
     }

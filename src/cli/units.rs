@@ -58,6 +58,14 @@ pub fn trimmed(value: f64, digits: usize) -> String {
     if text == "-0" { "0".to_owned() } else { text.to_owned() }
 }
 
+/// As [`trimmed`] with three decimals, with more where fewer than two digits would be left: a
+/// ripple of 0.00023 is not none.
+pub fn small(value: f64) -> String {
+    let size = value.abs();
+    let digits = if size > 0.0 && size < 0.01 { (1.0 - libm::log10(size).floor()).min(300.0) as usize } else { 3 };
+    trimmed(value, digits.max(3))
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -92,6 +100,16 @@ mod tests {
         }
         for (value, text) in [(50.0, "50"), (49.5, "49.5"), (-0.0001, "0"), (100.0, "100"), (0.1256, "0.126")] {
             assert_eq!(trimmed(value, 3), text);
+        }
+        for (value, text) in [
+            (0.5, "0.5"),
+            (0.012_34, "0.012"),
+            (0.002_34, "0.0023"),
+            (0.000_234, "0.00023"),
+            (4e-9, "0.000000004"),
+            (0.0, "0"),
+        ] {
+            assert_eq!(small(value), text);
         }
         assert_eq!(trimmed(1200.0, 0), "1200");
         assert_eq!([0.4, 59.4, 59.6, 7500.0].map(about), ["0 s", "59 s", "1 min 00 s", "2 h 05 min"]);

@@ -192,3 +192,26 @@ fn a_full_disk_is_a_failure() {
     assert_eq!(output.status.code(), Some(3));
     assert!(String::from_utf8(output.stderr).unwrap().starts_with("bandproof: printing"));
 }
+
+/// A band of 0.1 % at order 14 can't be held to 1e-4 dB. Of one of 40 % nothing is to be told.
+#[test]
+fn what_rounding_costs_is_said_where_it_is_more_than_nothing() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("narrow.toml");
+    let told = |edges: &str| {
+        let stage = format!(
+            "[[stage]]\nkind = \"bandpass\"\nfamily = \"elliptic\"\norder = 14\nedges_hz = {edges}\nripple_db = 3\nstop_db = 20\n"
+        );
+        std::fs::write(&path, stage).unwrap();
+        let text = stdout(bandproof().arg("design").arg(&path).args(["--rate", "48000"]));
+        text.split_whitespace().collect::<Vec<_>>().join(" ")
+    };
+    let narrow = told("[657.3, 657.9573]");
+    let (_, rest) = narrow.split_once("the response is up to ").unwrap_or_else(|| panic!("{narrow}"));
+    let (db, rest) = rest.split_once(" dB off what the stages ask for (at ").unwrap();
+    let (hz, _) = rest.split_once(" Hz)").unwrap();
+    // The largest error of these sections against mpmath is 0.016 dB (tests/filters/accuracy.rs).
+    assert!((0.012..0.017).contains(&db.parse().unwrap()), "{db} dB");
+    assert!((650.0..665.0).contains(&hz.parse().unwrap()), "{hz} Hz");
+    assert!(!told("[600, 900]").contains("Rounding"));
+}

@@ -4,6 +4,7 @@
 mod design;
 mod filter;
 mod interrupt;
+mod response_table;
 mod words;
 
 use assert_cmd::Command;
