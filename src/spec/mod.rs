@@ -10,6 +10,7 @@
 //!
 //! Every problem of a file is reported at once, each with its place and a repair.
 
+mod conjugates;
 mod contradict;
 mod demands;
 pub mod document;
@@ -40,6 +41,7 @@ mod words;
 mod write;
 
 use crate::files::digest::hexadecimal;
+pub use conjugates::conjugates;
 pub use error::{Place, Problem, SpecError};
 pub(crate) use schema::kind_schema;
 pub use schema::schema;

@@ -1,5 +1,6 @@
 //! Zeros, poles and gain of a user's transfer function.
 
+use super::conjugates::conjugates;
 use super::error::Place;
 use super::fields::{Fields, Got};
 use super::problems::Problems;
@@ -79,7 +80,8 @@ fn root(node: &Node, key: &str, problems: &mut Problems) -> Option<Root> {
 
 /// Whether every root off the real axis has its conjugate; each that has none is named.
 fn has_conjugates(roots: &[Root], places: &[&Place], key: &str, one: &str, problems: &mut Problems) -> bool {
-    let alone = without_conjugate(roots);
+    let mates = conjugates(roots);
+    let alone: Vec<usize> = (0..roots.len()).filter(|&index| mates[index].is_none()).collect();
     for &index in &alone {
         let (Some(root), Some(place)) = (roots.get(index), places.get(index)) else { continue };
         let show = |im: f64| format!("[{}, {}]", show_number(root.re.value), show_number(im));
@@ -88,42 +90,4 @@ fn has_conjugates(roots: &[Root], places: &[&Place], key: &str, one: &str, probl
         problems.add(place, message, repair);
     }
     alone.is_empty()
-}
-
-/// Indexes of the roots off the real axis that are left when each is paired with the nearest
-/// one that can be its conjugate.
-fn without_conjugate(roots: &[Root]) -> Vec<usize> {
-    let mut is_paired: Vec<_> = roots.iter().map(|root| root.im.value == 0.0).collect();
-    for (index, root) in roots.iter().enumerate() {
-        if is_paired.get(index).is_none_or(|is_paired| *is_paired) {
-            continue;
-        }
-        let candidates = roots.iter().enumerate().skip(index + 1);
-        let free = candidates.filter(|(other, _)| is_paired.get(*other).is_some_and(|is_paired| !*is_paired));
-        let conjugates = free.filter(|(_, other)| is_conjugate(root, other));
-        let nearest = conjugates.min_by(|(_, a), (_, b)| distance(root, a).total_cmp(&distance(root, b)));
-        if let Some((other, _)) = nearest {
-            for paired in [index, other] {
-                if let Some(is_paired) = is_paired.get_mut(paired) {
-                    *is_paired = true;
-                }
-            }
-        }
-    }
-    is_paired.iter().enumerate().filter(|(_, is_paired)| !**is_paired).map(|(index, _)| index).collect()
-}
-
-/// Whether two roots are conjugates within half a unit of their last given digits.
-fn is_conjugate(root: &Root, other: &Root) -> bool {
-    let is_near = |a: Coefficient, b: f64, unit: f64| {
-        // The difference itself is rounded.
-        (a.value - b).abs() <= 0.5 * a.unit.max(unit) + f64::EPSILON * a.value.abs()
-    };
-    let is_across = (root.im.value > 0.0) != (other.im.value > 0.0);
-    is_across && is_near(root.re, other.re.value, other.re.unit) && is_near(root.im, -other.im.value, other.im.unit)
-}
-
-/// How far a root is from the conjugate of another, along both axes.
-fn distance(root: &Root, other: &Root) -> f64 {
-    (root.re.value - other.re.value).abs() + (root.im.value + other.im.value).abs()
 }

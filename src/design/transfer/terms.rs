@@ -3,7 +3,7 @@
 use super::TransferError;
 use super::factor::{Factor, factor, product};
 use crate::design::double::Double;
-use crate::spec::{Coefficient, Root};
+use crate::spec::{Coefficient, Root, conjugates};
 
 /// Highest degree of a polynomial.
 pub(super) const HIGHEST: usize = 63;
@@ -107,39 +107,24 @@ pub(super) fn from_roots(what: &'static str, roots: &[Root]) -> Result<Vec<Facto
             return Err(TransferError::NotFinite { what: format!("{what} {}", i + 1), value });
         }
     }
-    let mut left: Vec<usize> = (0..roots.len()).collect();
     let mut factors = Vec::new();
-    while !left.is_empty() {
-        let index = left.remove(0);
-        let root = roots[index];
-        if root.im.value == 0.0 {
-            factors.push(Factor::Linear(-Double::from(root.re.value)));
-            continue;
+    for (index, (root, mate)) in roots.iter().zip(conjugates(roots)).enumerate() {
+        match mate {
+            None => {
+                let (re, im) = (root.re.value, root.im.value);
+                return Err(TransferError::Unpaired { what, index: index + 1, re, im });
+            }
+            Some(own) if own == index => factors.push(Factor::Linear(-Double::from(root.re.value))),
+            Some(mate) if mate > index => {
+                let other = roots[mate];
+                let re = between(root.re, other.re.value, other.re.unit);
+                let im = between(root.im, -other.im.value, other.im.unit);
+                factors.push(Factor::Quadratic(-re.scaled(1), re * re + im * im));
+            }
+            Some(_) => {}
         }
-        let apart = |other: &Root| libm::hypot(root.re.value - other.re.value, root.im.value + other.im.value);
-        let mate = (0..left.len())
-            .filter(|&k| mates(&root, &roots[left[k]]))
-            .min_by(|&a, &b| apart(&roots[left[a]]).total_cmp(&apart(&roots[left[b]])));
-        let Some(mate) = mate else {
-            let (re, im) = (root.re.value, root.im.value);
-            return Err(TransferError::Unpaired { what, index: index + 1, re, im });
-        };
-        let other = roots[left.remove(mate)];
-        let re = between(root.re, other.re.value, other.re.unit);
-        let im = between(root.im, -other.im.value, other.im.unit);
-        factors.push(Factor::Quadratic(-re.scaled(1), re * re + im * im));
     }
     Ok(factors)
-}
-
-/// Whether the two may be one another's conjugates within their digits.
-fn mates(root: &Root, other: &Root) -> bool {
-    let near = |a: f64, b: f64, halves: f64| {
-        (a - b).abs() <= halves * (1.0 + 1e-9) + 4.0 * f64::EPSILON * a.abs().max(b.abs())
-    };
-    near(root.re.value, other.re.value, half(&root.re) + half(&other.re))
-        && near(root.im.value, -other.im.value, half(&root.im) + half(&other.im))
-        && (root.im.value > 0.0) != (other.im.value > 0.0)
 }
 
 /// The finer given of two, or their mean.
