@@ -62,14 +62,14 @@ impl Drop for Room<'_> {
 
 /// Per channel the accumulator and, 16 bytes a frame, the segments open at once with
 /// the one in the transform; the window and the transform's tables once (32). Where the filter
-/// runs both ways, per channel what it holds and, 8 bytes a frame, the input that waits for
-/// what it holds back.
+/// runs both ways, per channel what it holds and, 10 bytes a frame with room to grow, the
+/// input that waits for what it holds back.
 fn estimated_bytes(brief: &Brief, treatment: &Treatment) -> u64 {
     let length = treatment.segment_frames(brief.rate_hz, brief.frames).unwrap_or(0);
     let channel =
         (Accumulator::memory_bytes(length) as u64).saturating_add(16 * (OPEN_AT_ONCE as u64 + 1) * length as u64);
     let both_ways = treatment.both_ways.map_or(0, |reach| {
-        reach.memory_bytes(brief.frames).saturating_add(8 * brief.frames.min(reach.lag_frames() as u64))
+        reach.memory_bytes(brief.frames).saturating_add(10 * brief.frames.min(reach.lag_frames() as u64))
     });
     channel.saturating_add(both_ways).saturating_mul(u64::from(brief.channels)).saturating_add(32 * length as u64)
 }
