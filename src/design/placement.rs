@@ -1,7 +1,8 @@
 //! Which lines of which stages and bands fit below half a sample rate.
 //!
 //! The bilinear transform maps half the rate to infinity, so a stage's edges and stop edges
-//! must lie below it, and so must the match_hz of an analog one. A band is only looked at: its upper end may be half the rate itself.
+//! must lie below it, and so must the `match_hz` of an analog one. A band is only looked at:
+//! its upper end may be half the rate itself.
 //! Lines of a row of two or more are left out quietly where they do not fit, as long
 //! as the first does; whatever else does not fit is the spec's to decide.
 

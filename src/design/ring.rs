@@ -262,6 +262,7 @@ mod tests {
             left -= ring.advance() * Complex64::new(libm::cos(turned), -libm::sin(turned));
         }
     }
+
     #[test]
     fn both_ways_the_frames_are_the_autocorrelation_of_the_response() {
         for count in 1..=6 {

@@ -10,6 +10,18 @@ pub fn figure(value: f64) -> String {
     if short == "-0" { "0".to_owned() } else { short.to_owned() }
 }
 
+/// The radius of a pole that lies `distance` inside the unit circle, negative outside:
+/// `1.0003`, or `1 + 2.0e-9` where six decimals show nothing of the distance.
+pub fn radius(distance: f64) -> String {
+    if distance.abs() >= 1e-6 {
+        figure(1.0 - distance)
+    } else if distance == 0.0 {
+        "1".to_owned()
+    } else {
+        format!("1 {} {:.1e}", if distance < 0.0 { '+' } else { '-' }, distance.abs())
+    }
+}
+
 /// A level or attenuation as the report rounds it.
 pub fn decibel(value: f64) -> String {
     figure(libm::round(value * 1000.0) / 1000.0)

@@ -2,7 +2,7 @@
 
 use super::head::Head;
 use super::integers::Integers;
-use super::precision::Rounded;
+use super::precision::{Precision, Rounded};
 use super::{ExportError, document};
 use serde_json::{Value, json};
 
@@ -31,8 +31,8 @@ fn arithmetic(bits: u32) -> Vec<String> {
         "q_bits.b counts section_shift in: the output of a section is 2^-section_shift of what its H(z) makes. \
          The output of the last times 2^output_shift is the filtered signal."
             .to_owned(),
-        "The state x[n-1], x[n-2], y[n-1], y[n-2], e[n-1], e[n-2] of every section starts with zeros. From there no input within full \
-         scale overflows in any section: bound by the L1 norm of the impulse response, rounding counted in."
+        "The state x[n-1], x[n-2], y[n-1], y[n-2], e[n-1], e[n-2] of every section starts with zeros. From there no \
+         input within full scale overflows in any section: bound by the L1 norm of the impulse response, rounding counted in."
             .to_owned(),
         "error_bound_steps: the most by which rounding moves the output, in steps of its words. noise_dbfs: level of that \
          in the filtered signal if errors are white, relative to a full-scale sine, not to sound pressure."
@@ -42,11 +42,10 @@ fn arithmetic(bits: u32) -> Vec<String> {
 
 /// The document.
 pub(super) fn text(head: &Head<'_>, rounded: &Rounded) -> Result<String, ExportError> {
-    let Some((words, scaling)) = &rounded.words else {
+    let (Precision::Bits { bits, .. }, Some((words, scaling))) = (head.precision, &rounded.words) else {
         return Err(ExportError::Json("there are no integers".to_owned()));
     };
     let mut map = document::head(head)?;
-    let bits = map.get("bits").and_then(Value::as_u64).and_then(|bits| u32::try_from(bits).ok()).unwrap_or(0);
     let mut arithmetic = arithmetic(bits);
     if head.passes > 1 {
         arithmetic.push(BOTH_WAYS.to_owned());

@@ -17,7 +17,7 @@
 
 use crate::design::check::{BandDesign, Check, judge};
 use crate::design::sections::{POLE_MARGIN, pole_radius};
-use crate::design::wording::{beyond, decibel, figure};
+use crate::design::wording::{self, beyond, decibel, figure};
 use crate::design::{Design, Placed};
 use crate::section::Section;
 use crate::spec::{NamedBand, Requirement};
@@ -101,11 +101,11 @@ fn unstable(sections: &[Section]) -> Option<Loss> {
     let outside: Vec<(f64, usize)> = radii.filter(|(radius, _)| !is_inside(*radius)).collect();
     let (radius, number) = outside.first()?;
     let sentence = match outside.len() {
-        1 => format!("section {number} is unstable, it has a pole at a radius of {}", figure(*radius)),
+        1 => format!("section {number} is unstable, it has a pole at a radius of {}", wording::radius(1.0 - radius)),
         count => format!(
             "{count} of {} sections are unstable, section {number} has a pole at a radius of {}",
             sections.len(),
-            figure(*radius)
+            wording::radius(1.0 - radius)
         ),
     };
     Some(Loss { sentence, is_refused: true })

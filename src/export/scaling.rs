@@ -46,9 +46,9 @@ pub struct Scaling {
     pub output_shift: i32,
     /// The most that rounding adds to the cascade's output, in steps of its words.
     pub error_bound_steps: f64,
-    /// Level of what rounding adds to the signal that all passes make if each section's errors are white
-    /// and evenly spread over a step (common practice, no source), dB relative to a
-    /// full-scale sine; `None` without sections.
+    /// Level of what rounding adds to the signal that all passes make if each section's
+    /// errors are white and evenly spread over a step (common practice, no source), dB
+    /// relative to a full-scale sine; `None` without sections.
     pub noise_dbfs: Option<f64>,
 }
 

@@ -3,9 +3,8 @@
 /// A number of a user's transfer function, with the place of its last given digit.
 ///
 /// A normalized spec has it with as many digits, zeros at its end and all: `0.7050` has the
-/// unit 1e-4, and reads the same again. A spec in a
-/// report or another JSON document is without such zeros, since those are put together from
-/// values.
+/// unit 1e-4, and reads the same again. A spec in a report or another JSON document is without
+/// such zeros, since those are put together from values.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Coefficient {
     /// The number.

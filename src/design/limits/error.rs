@@ -40,8 +40,9 @@ pub enum LimitsError {
     },
     /// The prototype of an order holds them, but no finished filter does.
     #[error(
-        "order {order} would hold ripple_db = {} and stop_db = {}, but rounding its coefficients to f64 costs up to {missed_db:.1e} dB more; raise ripple_db, lower stop_db, move the stop edges \
-         farther from the edges, or filter at a lower sample rate",
+        "order {order} would hold ripple_db = {} and stop_db = {}, but rounding its coefficients to f64 costs up to \
+         {missed_db:.1e} dB more; raise ripple_db, lower stop_db, move the stop edges farther from the edges, or filter \
+         at a lower sample rate",
         figure(*ripple_db), figure(*stop_db)
     )]
     Rounding {

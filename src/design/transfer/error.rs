@@ -1,6 +1,6 @@
 //! What keeps a transfer function from being a filter.
 
-use crate::design::wording::figure;
+use crate::design::wording::{figure, radius};
 
 /// What keeps a transfer function from being a filter.
 #[derive(Clone, Debug, PartialEq, thiserror::Error)]
@@ -149,16 +149,5 @@ impl TransferError {
     pub fn depends_on_rate(&self) -> bool {
         // In s coefficients and roots are scaled with the rate before they are taken apart.
         matches!(self, TransferError::MatchHz { .. } | TransferError::Range { .. } | TransferError::Factoring { .. })
-    }
-}
-
-/// `1.0003`; the distance where the radius shows no digits of it.
-fn radius(distance: f64) -> String {
-    if distance.abs() >= 1e-6 {
-        figure(1.0 - distance)
-    } else if distance == 0.0 {
-        "1".to_owned()
-    } else {
-        format!("1 + {:.1e}", -distance)
     }
 }

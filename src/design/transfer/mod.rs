@@ -2,12 +2,12 @@
 //! good for.
 //!
 //! Polynomials become real factors (`factor`, by way of `roots`), roots stand for factors as
-//! they are; `digital` and `analog` bring both to z^-1, `cascade`
-//! to sections. `written` evaluates what the user wrote, with what its last digits leave
+//! they are; `digital` and `analog` bring both to z^-1, `cascade` to sections. `written` evaluates what the user wrote, with what its last digits leave
 //! open; `remarks` says what that comes to, `unstable` why a filter can't run.
 //!
-//! All up to the coefficients of the sections is in doubled precision ([`crate::design::double`]): polynomials
-//! of high order lose more digits than f64 has when they are taken apart.
+//! All up to the coefficients of the sections is in doubled precision
+//! ([`crate::design::double`]): polynomials of high order lose more digits than f64 has when
+//! they are taken apart.
 
 mod analog;
 mod cascade;

@@ -13,9 +13,10 @@
 //! ```
 //!
 //! Bounds for any errors of that size, not to first order only; to first order they are the
-//! absolute sensitivities |dP/dc_i| d_i added up. The bound below holds in any direction, not in
-//! that of P alone; where none of them keeps P from 0, a zero may lie at that frequency. Of roots the factor x - root takes the place
-//! of P, with the errors of real and imaginary part; bounds of all parts are multiplied.
+//! absolute sensitivities |dP/dc_i| d_i added up. Whether P may be 0 is looked at in other
+//! directions as well, not in that of P alone: where none keeps it from 0, a zero may lie at
+//! that frequency. Of roots the factor x - root takes the place of P, with the errors of real
+//! and imaginary part; bounds of all parts are multiplied.
 
 use super::analog::{Scale, scaled};
 use super::terms::{half, values};
